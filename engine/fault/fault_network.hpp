@@ -1,0 +1,83 @@
+// The solved sequence networks, and how a unit fault current at one bus spreads over the elements around it.
+#pragma once
+#include "engine/fault/fault_solver.hpp"
+
+namespace kiloamp::detail {
+
+/// Current from `element` into `bus`, in per unit of the bus, for 1 pu of fault current in each sequence.
+struct CurrentShare {
+  ElementRef element;
+  BusIndex bus;
+  BySequence<Complex> per_fault_current;
+  bool into_faulted_bus = false;
+};
+/// Voltage drop at `bus` [pu] for 1 pu of fault current in each sequence: Z_jk.
+struct VoltageShare {
+  BusIndex bus;
+  BySequence<Complex> per_fault_current;
+  double shift_ratio =
+      0;  ///< of its zero-sequence potential to the faulted bus's when their island has no path to earth
+};
+/// Zero-sequence current of a winding with earthed star point [kA per pu of zero-sequence fault current].
+struct NeutralShare {
+  ElementRef element;
+  BusIndex bus;
+  Complex ka_per_fault_pu;
+};
+struct Reach {
+  std::vector<CurrentShare> currents;
+  std::vector<VoltageShare> voltages;
+  std::vector<NeutralShare> neutrals;
+  std::vector<sparse::Factorisation<Complex, 3>::Entry>
+      column;  ///< scratch: Z e_k when the depth asks for it
+};
+
+/// Y assembled from the model's blocks and factorised once; inverse entries on its pattern.
+class FaultNetwork {
+ public:
+  using Inverse = sparse::Factorisation<Complex, 3>::SelectedInverse;
+
+  FaultNetwork(const SequenceModel& model, int threads);
+
+  [[nodiscard]] const Inverse& inverse() const { return inverse_; }
+  [[nodiscard]] const SolutionQuality& quality() const { return factors_->accuracy(); }
+
+  /// Shares of a fault at `bus`, of all buses at most `depth` branches or closed switches away. Element
+  /// currents follow from I_i = sum_j y_ij Z_jk over the element's terminals; those of closed switches from
+  /// the balance at each bus.
+  void reach(BusIndex bus, int depth, Reach& reach) const;
+
+ private:
+  struct Slot {
+    std::uint32_t block = 0;
+    std::uint32_t position = 0;
+    bool used = false;
+  };
+  /// A node that closed switches make of several buses.
+  struct SwitchGroup {
+    std::vector<std::uint32_t> switches;                        ///< into model.closed_switches
+    std::vector<std::pair<std::uint32_t, std::uint32_t>> ends;  ///< positions in buses_of(node)
+    std::vector<double> inverse;  ///< of the grounded Laplacian, (buses - 1)^2, row-major
+  };
+
+  void assemble(int threads);
+  void prepare_switches();
+  [[nodiscard]] std::int32_t edge_between(Node a, Node b) const;
+  [[nodiscard]] BySequence<Complex> z_to(Node j, Node k, const Reach& reach) const;
+  [[nodiscard]] BySequence<Complex> share_of(std::uint32_t terminal, Node k, const Reach& reach) const;
+  void add_terminal_shares(BusIndex bus, BusIndex fault_bus, Node k, Reach& reach) const;
+  void add_induced_shares(Node k, Reach& reach) const;
+  void add_switch_shares(BusIndex bus, BusIndex fault_bus, Node k, Reach& reach) const;
+  [[nodiscard]] std::vector<BusIndex> buses_within(BusIndex bus, int depth) const;
+
+  const SequenceModel* model_;
+  std::vector<sparse::Edge> edges_;          ///< i < j, sorted
+  std::vector<std::uint32_t> edge_start_;    ///< edges with i = n: [edge_start_[n], edge_start_[n + 1])
+  std::vector<std::array<Slot, 2>> slots_;   ///< per terminal: its own block, and the coupled group it is in
+  std::vector<std::int32_t> group_of_node_;  ///< into groups_, -1: a single bus
+  std::vector<SwitchGroup> groups_;
+  std::unique_ptr<sparse::Factorisation<Complex, 3>> factors_;
+  Inverse inverse_;
+};
+
+}  // namespace kiloamp::detail
