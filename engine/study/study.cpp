@@ -1,0 +1,172 @@
+#include "engine/study/study.hpp"
+
+#include <algorithm>
+
+namespace kiloamp {
+
+namespace {
+
+std::vector<Prefault> prefault_of(const Network& network, const PrefaultChoice& choice) {
+  std::vector<Prefault> prefault(network.buses.size());
+  for (std::size_t b = 0; b < prefault.size(); ++b) {
+    if (const auto* value = std::get_if<PrefaultValue>(&choice)) prefault[b].pu = value->pu;
+    if (!std::holds_alternative<PrefaultAsGiven>(choice)) continue;
+    prefault[b].pu = network.buses[b].prefault_pu.value_or(network.prefault_pu.value_or(1.0));
+    prefault[b].deg = network.buses[b].prefault_deg;
+  }
+  return prefault;
+}
+
+std::string counted(std::size_t count, const char* one, const char* many) {
+  return std::to_string(count) + " " + (count == 1 ? one : many);
+}
+
+template <typename Section>
+std::size_t live_count(const Section& section) {
+  return static_cast<std::size_t>(
+      std::count_if(section.begin(), section.end(), [](const auto& e) { return e.is_in_service(); }));
+}
+
+// Elements that are in the case and that a fault study does not use.
+void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<std::string>& warnings) {
+  if (const auto count = live_count(n.inverter_sources))
+    warnings.push_back(counted(count, "inverter source", "inverter sources") +
+                       " left out: a voltage behind an impedance does not describe them");
+  const auto drives = static_cast<std::size_t>(
+      std::count_if(n.induction_motors.begin(), n.induction_motors.end(),
+                    [](const auto& m) { return m.is_in_service() && !m.drives_fault_current(); }));
+  if (drives > 0)
+    warnings.push_back(counted(drives, "converter-fed motor", "converter-fed motors") +
+                       " left out: feeds_back is not set");
+  if (options.case_kind == CaseKind::min && !n.induction_motors.empty())
+    warnings.push_back(
+        counted(n.induction_motors.size(), "induction motor entry", "induction motor entries") +
+        " left out: smallest currents are wanted");
+  if (const auto count = live_count(n.power_station_units))
+    warnings.push_back(
+        counted(count, "power station unit", "power station units") +
+        " taken as separate machine and transformer: the classical method has no common correction");
+  const auto devices = live_count(n.breakers) + live_count(n.fuses);
+  if (devices > 0)
+    warnings.push_back(counted(devices, "breaker or fuse", "breakers and fuses") +
+                       " not judged: this study computes currents, not duties");
+  if (const auto count = live_count(n.relays))
+    warnings.push_back(counted(count, "relay", "relays") + " not evaluated in this study");
+  const auto shunts =
+      static_cast<std::size_t>(std::count_if(n.shunts.begin(), n.shunts.end(), [](const Shunt& s) {
+        return s.is_in_service() && !s.grounded.value_or(false);
+      }));
+  if (shunts > 0 && !options.include_shunts)
+    warnings.push_back(
+        counted(shunts, "shunt without earthed star point", "shunts without earthed star point") +
+        " left out, as is usual in fault studies");
+}
+
+void warn_of_model(const Network& n, const SequenceModel& model, const SolutionQuality& quality,
+                   std::vector<std::string>& warnings) {
+  std::size_t dead = 0, no_earth = 0;
+  std::vector<std::size_t> switches(model.node_count(), 0);
+  for (std::size_t b = 0; b < n.buses.size(); ++b) {
+    const Node node = model.node_of_bus[b];
+    if (node == Node::none) continue;
+    if (!model.has_source[at(node)])
+      ++dead;
+    else if (!model.has_zero_path[at(node)])
+      ++no_earth;
+  }
+  for (const auto& s : model.closed_switches) ++switches[at(model.node_of_bus[at(s.from)])];
+  std::size_t loops = 0;
+  for (std::size_t node = 0; node < switches.size(); ++node)
+    if (switches[node] > 0 && switches[node] >= model.buses_of(static_cast<Node>(node)).size()) ++loops;
+  if (dead > 0)
+    warnings.push_back(counted(dead, "bus has no source: its fault currents are 0",
+                               "buses have no source: their fault currents are 0"));
+  if (no_earth > 0)
+    warnings.push_back(
+        counted(no_earth, "bus has no zero-sequence path to earth: its earth-fault current is 0",
+                "buses have no zero-sequence path to earth: their earth-fault currents are 0"));
+  if (loops > 0)
+    warnings.push_back(
+        counted(loops, "loop of closed switches", "loops of closed switches") +
+        ": the currents of its switches are shared as if every switch had the same small resistance");
+  static const char* names[] = {"zero", "positive", "negative"};
+  for (int s = 0; s < 3; ++s)
+    if (quality[s].pivoting)
+      warnings.push_back(std::string("the ") + names[s] + " sequence needed a pivoting solution");
+}
+
+}  // namespace
+
+Study::Study(Network network, const StudyOptions& options) : network_(std::move(network)), options_(options) {
+  if (options_.scenario) {
+    apply_scenario(network_, *options_.scenario);
+    scenario_id_ = network_.scenarios[*options_.scenario].id;
+  }
+  defaults_ = fill_defaults(network_);
+  apply_case_kind(network_, options_.case_kind);
+  model_ = build_sequence_model(network_, {options_.include_shunts, {}});
+  solver_ = std::make_unique<FaultSolver>(model_, prefault_of(network_, options_.prefault), options_.threads);
+  warn_of_unused(network_, options_, warnings_);
+  for (const DefaultUse& use : defaults_)
+    if (use.field == "r0_ohm_per_km, x0_ohm_per_km")
+      warnings_.push_back("earth-fault currents rest on assumed zero-sequence data of " +
+                          counted(use.elements.size(), "line", "lines") + " (" + use.value + ")");
+  warn_of_model(network_, model_, solver_->quality(), warnings_);
+}
+
+void Study::for_each_fault(const std::function<void(const FaultResult&)>& visit) const {
+  const auto workspace = solver_->make_workspace();
+  FaultResult result;
+  const auto at_bus = [&](BusIndex bus) {
+    for (const FaultKind kind : options_.kinds) {
+      solver_->solve({bus, kind, options_.phase_ohm, options_.earth_ohm}, options_.fault, *workspace, result);
+      visit(result);
+    }
+  };
+  if (!options_.buses.empty()) {
+    for (const BusIndex bus : options_.buses) at_bus(bus);
+    return;
+  }
+  for (std::size_t b = 0; b < network_.buses.size(); ++b)
+    if (network_.buses[b].is_in_service()) at_bus(static_cast<BusIndex>(b));
+}
+
+const char* fault_name(FaultKind kind) {
+  switch (kind) {
+    case FaultKind::three_phase:
+      return "three_phase";
+    case FaultKind::line_to_ground:
+      return "line_to_ground";
+    case FaultKind::line_to_line:
+      return "line_to_line";
+    case FaultKind::double_line_to_ground:
+      return "double_line_to_ground";
+  }
+  return "";
+}
+
+const std::vector<std::string>& cautions() {
+  static const std::vector<std::string> text{
+      "Currents are prospective: those of a bolted fault, or one through the impedance stated, at the "
+      "prefault voltage stated. A real event may differ.",
+      "Results hold for the network state named here and for no other. Normally open points are open; "
+      "interlocks are assumed to work.",
+      "Source data change: confirm the grid's fault levels with its operator, with date and validity, before "
+      "use and at every change.",
+      "The fault level of a bus is not the duty of each device at that bus. Compare quantities of IEC "
+      "methods with IEC ratings and ANSI/IEEE ones with ANSI/IEEE ratings.",
+      "A symmetrical current alone does not prove a device: X/R, peak and making duty, and short-time "
+      "withstand are separate checks.",
+      "The largest current is not safe for setting protection and the smallest not for ratings. This is "
+      "neither an arc-flash nor a coordination study.",
+      "Near generators and inverters the current decays and depends on excitation and control: obtain the "
+      "maker's data or tests.",
+      "Zero-sequence results rest on vector groups, neutral earthing, cable screens and mutual coupling as "
+      "given. Arcs, evolving faults, recovery voltages, ferroresonance and earth-grid safety are outside.",
+      "Equipment ratings and protection settings are to be decided under the local codes by a licensed or "
+      "otherwise qualified engineer, who must check this study.",
+  };
+  return text;
+}
+
+}  // namespace kiloamp

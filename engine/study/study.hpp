@@ -1,0 +1,75 @@
+// A network in one state, modelled and solved: what every study starts from.
+#pragma once
+#include <functional>
+#include <string>
+#include <variant>
+
+#include "engine/fault/fault_solver.hpp"
+#include "engine/network/finding.hpp"
+
+namespace kiloamp {
+
+/// Prefault voltages: as the case gives them (a bus's own, else the case's, else 1 pu), or 1 pu everywhere,
+/// or one value everywhere.
+struct PrefaultAsGiven {};
+struct PrefaultFlat {};
+struct PrefaultValue {
+  double pu;
+};
+using PrefaultChoice = std::variant<PrefaultAsGiven, PrefaultFlat, PrefaultValue>;
+
+struct StudyOptions {
+  CaseKind case_kind = CaseKind::max;
+  std::optional<std::size_t> scenario;  ///< index in Network::scenarios
+  PrefaultChoice prefault = PrefaultAsGiven{};
+  bool include_shunts = false;
+  std::vector<FaultKind> kinds{kAllFaults.begin(), kAllFaults.end()};
+  std::vector<BusIndex> buses;  ///< empty: all buses in service
+  Complex phase_ohm = 0, earth_ohm = 0;
+  FaultOptions fault;
+  int threads = 1;
+};
+
+/// Owns the network in the studied state, its model and the solved sequence networks. Not movable: the parts
+/// refer to each other.
+class Study {
+ public:
+  /// @throws NetworkError            the state contradicts itself (loop of vector groups)
+  /// @throws sparse::NumericalError  a sequence network cannot be solved
+  Study(Network network, const StudyOptions& options);
+  Study(const Study&) = delete;
+  Study& operator=(const Study&) = delete;
+
+  [[nodiscard]] const Network& network() const { return network_; }
+  [[nodiscard]] const StudyOptions& options() const { return options_; }
+  [[nodiscard]] const SequenceModel& model() const { return model_; }
+  [[nodiscard]] const FaultSolver& solver() const { return *solver_; }
+  [[nodiscard]] const std::vector<DefaultUse>& defaults_used() const { return defaults_; }
+  /// What a reader must know besides the numbers: elements that the study leaves out, assumed zero-sequence
+  /// data, buses without a source, loops of closed switches, a sequence whose equations needed a pivoting
+  /// solution.
+  [[nodiscard]] const std::vector<std::string>& warnings() const { return warnings_; }
+  [[nodiscard]] const std::string& scenario_id() const { return scenario_id_; }
+
+  /// Solves every wanted fault, bus by bus in the case's order and kind by kind, and hands each to `visit`;
+  /// the result is only valid during the call.
+  void for_each_fault(const std::function<void(const FaultResult&)>& visit) const;
+
+ private:
+  Network network_;
+  StudyOptions options_;
+  std::string scenario_id_;
+  std::vector<DefaultUse> defaults_;
+  SequenceModel model_;
+  std::unique_ptr<FaultSolver> solver_;
+  std::vector<std::string> warnings_;
+};
+
+/// The cautions that every report prints, in order. Source: common practice; standards named where a caution
+/// quotes one.
+[[nodiscard]] const std::vector<std::string>& cautions();
+
+/// "three_phase", "line_to_ground", "line_to_line", "double_line_to_ground": the words of results.
+[[nodiscard]] const char* fault_name(FaultKind kind);
+
+}  // namespace kiloamp
