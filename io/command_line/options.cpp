@@ -1,0 +1,258 @@
+#include "io/command_line/options.hpp"
+
+#include <CLI/CLI.hpp>
+#include <algorithm>
+#include <charconv>
+#include <ostream>
+#include <thread>
+
+#include "io/case_file/case_reader.hpp"
+#include "io/command_line/run.hpp"
+
+namespace kiloamp {
+
+namespace {
+
+constexpr const char* kVersion = "kiloamp 0.1.0";
+constexpr const char* kOverview =
+    "Short-circuit currents of a three-phase network: largest and smallest, at every bus, with "
+    "contributions.\n\n"
+    "  kiloamp check CASE            read a case and judge its data\n"
+    "  kiloamp sweep CASE            faults at every bus\n"
+    "  kiloamp fault CASE --bus ID   faults at one bus, with currents and voltages around it\n\n"
+    "kiloamp VERB --help explains a verb. CASE is a case file, or - for standard input.\n"
+    "Exit codes: 0 the study ran; 1 it could not be computed, or a cross-check disagreed; 2 the input is "
+    "wrong.";
+
+const std::vector<std::string_view> kFaultWords{"3ph", "lg", "ll", "llg"};
+
+std::string choices(const std::vector<std::string_view>& words) {
+  std::string out;
+  for (const auto word : words) out += (out.empty() ? "" : ", ") + std::string(word);
+  return out;
+}
+
+std::string must_be(const std::string& value, const std::vector<std::string_view>& words) {
+  const std::string near = nearest(value, words);
+  return "\"" + value + "\" is not one of " + choices(words) +
+         (near.empty() ? "" : "; did you mean " + near + "?");
+}
+
+// A check for CLI11: the value is one of the words.
+CLI::Validator one_of(std::vector<std::string_view> words) {
+  return CLI::Validator(
+      [words](std::string& value) {
+        return std::find(words.begin(), words.end(), value) == words.end() ? must_be(value, words)
+                                                                           : std::string();
+      },
+      "");
+}
+
+bool read_number(std::string_view text, double& value) {
+  const auto end = text.data() + text.size();
+  const auto result = std::from_chars(text.data(), end, value);
+  return result.ec == std::errc() && result.ptr == end && std::isfinite(value);
+}
+
+// "R,X" in ohm.
+std::string read_impedance(const std::string& text, Complex& z) {
+  const auto comma = text.find(',');
+  double r = 0, x = 0;
+  const bool read = comma != std::string::npos && read_number(std::string_view(text).substr(0, comma), r) &&
+                    read_number(std::string_view(text).substr(comma + 1), x);
+  if (!read || r < 0) return "\"" + text + "\" is not R,X in ohm with R >= 0, for example 0.5,0";
+  z = {r, x};
+  return {};
+}
+
+std::string read_prefault(const std::string& text, PrefaultChoice& choice) {
+  double pu = 0;
+  if (text == "case")
+    choice = PrefaultAsGiven{};
+  else if (text == "flat")
+    choice = PrefaultFlat{};
+  else if (read_number(text, pu) && pu > 0 && pu <= 2)
+    choice = PrefaultValue{pu};
+  else
+    return "\"" + text + "\" is not case, flat or a voltage in pu up to 2";
+  return {};
+}
+
+std::string read_kinds(const std::string& text, std::vector<FaultKind>& kinds) {
+  kinds.clear();
+  std::size_t start = 0;
+  while (start <= text.size()) {
+    const std::size_t comma = std::min(text.find(',', start), text.size());
+    const std::string word = text.substr(start, comma - start);
+    const auto found = std::find(kFaultWords.begin(), kFaultWords.end(), word);
+    if (found == kFaultWords.end()) return must_be(word, kFaultWords);
+    const auto kind = static_cast<FaultKind>(found - kFaultWords.begin());
+    if (std::find(kinds.begin(), kinds.end(), kind) == kinds.end()) kinds.push_back(kind);
+    start = comma + 1;
+  }
+  return {};
+}
+
+// CLI11 validators double as setters for options with a form of their own.
+template <typename Target>
+CLI::Validator into(std::string (*read)(const std::string&, Target&), Target& target) {
+  return CLI::Validator([read, &target](std::string& text) { return read(text, target); }, "");
+}
+
+struct Texts {  // what the custom options were given as
+  std::string kinds, prefault, phase, earth, method, case_kind;
+};
+
+void add_study_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
+  app.add_option("CASE", c.case_file, "case file, or - for standard input")->required();
+  auto* bus = app.add_option("--bus", c.buses,
+                             one_place ? "bus of the fault; may be repeated"
+                                       : "only this bus; may be repeated. Default: all buses in service");
+  bus->type_name("ID")->expected(1)->multi_option_policy(CLI::MultiOptionPolicy::TakeAll);
+  if (one_place) bus->required();
+  app.add_option("--fault", t.kinds,
+                 "kinds of fault, separated by commas: 3ph, lg, ll, llg. Default: all four")
+      ->type_name("KINDS")
+      ->check(into(read_kinds, c.study.kinds));
+  app.add_option("--scenario", c.scenario, "state of the network, by its id in the case. Default: as written")
+      ->type_name("ID");
+  app.add_option("--case-kind", t.case_kind,
+                 "max: largest currents (default); min: feeders at min, hot conductors, motors out")
+      ->type_name("KIND")
+      ->check(one_of({"max", "min"}));
+  app.add_option("--method", t.method, "classical: voltage behind impedance (the only one)")
+      ->type_name("METHOD")
+      ->check(one_of({"classical"}));
+  app.add_option("--prefault", t.prefault,
+                 "prefault voltage: case (as the case gives it, 1 pu where it does not; default), flat (1 "
+                 "pu), or a number in pu")
+      ->type_name("U")
+      ->check(into(read_prefault, c.study.prefault));
+  app.add_option("--phase-impedance", t.phase,
+                 "ohm in each faulted phase, between it and the point where they join. Default: 0,0")
+      ->type_name("R,X")
+      ->check(into(read_impedance, c.study.phase_ohm));
+  app.add_option("--earth-impedance", t.earth, "ohm from that point to earth (lg, llg). Default: 0,0")
+      ->type_name("R,X")
+      ->check(into(read_impedance, c.study.earth_ohm));
+  app.add_flag("--shunts", c.study.include_shunts,
+               "keep line charging and shunts in positive and negative sequence too");
+  app.add_option(
+         "--depth", c.study.fault.depth,
+         "voltages, branch currents and neutral currents up to N buses away. Default: 0, the faulted bus")
+      ->type_name("N")
+      ->check(CLI::Range(0, 1000));
+  app.add_flag(
+      "--cross-check", c.cross_check,
+      "solve every fault again in phase coordinates and print the largest difference; above 1e-6 exit 1");
+  app.add_option("--threads", c.study.threads,
+                 "threads for the solution; results do not depend on it. Default: all cores")
+      ->type_name("N")
+      ->check(CLI::Range(1, 256));
+  app.add_option("--format", c.format, "text (default), csv or json")
+      ->type_name("FORMAT")
+      ->check(one_of({"text", "csv", "json"}));
+  app.add_option("--table", c.table,
+                 "csv: faults (default), one row per fault, or contributions, one row per element and fault")
+      ->type_name("TABLE")
+      ->check(one_of({"faults", "contributions"}));
+  app.add_option("--output", c.output, "write to FILE, whole or not at all. Default: standard output")
+      ->type_name("FILE");
+}
+
+std::string describe(const CLI::App& app, const std::string& what) {
+  return what + "\nkiloamp " +
+         (app.get_subcommands().empty() ? "" : app.get_subcommands().front()->get_name() + " ") +
+         "--help explains\n";
+}
+
+}  // namespace
+
+Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream& err) {
+  Command c;
+  Texts t;
+  c.study.threads = static_cast<int>(std::max(1U, std::thread::hardware_concurrency()));
+  CLI::App app(kOverview, "kiloamp");
+  app.get_formatter()->column_width(34);
+  app.set_version_flag("--version", kVersion, "print the version");
+  app.require_subcommand(1);
+  app.failure_message([](const CLI::App* a, const CLI::Error& e) { return describe(*a, e.what()); });
+
+  CLI::App* check = app.add_subcommand(
+      "check",
+      "Reads a case, lists every error or every value outside its usual range, counts its elements,\nand "
+      "says which buses have no source or no earth path and which defaults a study would use.");
+  check->add_option("CASE", c.case_file, "case file, or - for standard input")->required();
+  check
+      ->add_option("--scenario", c.scenario,
+                   "state of the network, by its id in the case. Default: as written")
+      ->type_name("ID");
+  check->add_option("--output", c.output, "write to FILE, whole or not at all. Default: standard output")
+      ->type_name("FILE");
+
+  CLI::App* sweep = app.add_subcommand(
+      "sweep",
+      "Faults at every bus: current, X/R, peak, earth current and Thevenin impedances.\nExample: kiloamp "
+      "sweep plant.json --fault 3ph,lg --scenario \"T1 out\"");
+  add_study_options(*sweep, c, t, false);
+  sweep->add_flag(
+      "--contributions", c.contributions,
+      "text: a table of the currents from every element at the bus. CSV: see --table; JSON has them always");
+
+  CLI::App* fault = app.add_subcommand(
+      "fault",
+      "Faults at one bus, with the currents of every element, voltages and neutral currents.\nExample: "
+      "kiloamp fault plant.json --bus MAIN-11 --fault lg --earth-impedance 5,0 --depth 1");
+  add_study_options(*fault, c, t, true);
+
+  // The nearest verb is worth more than the parser's own words for an unknown one.
+  if (!arguments.empty() && arguments.front().rfind('-', 0) != 0 && arguments.front() != "check" &&
+      arguments.front() != "sweep" && arguments.front() != "fault") {
+    err << "kiloamp: " << must_be(arguments.front(), {"check", "sweep", "fault"})
+        << "\nkiloamp --help explains\n";
+    return {std::nullopt, kInputWrong};
+  }
+  if (arguments.empty()) arguments.emplace_back("--help");
+  std::reverse(arguments.begin(), arguments.end());  // CLI11 takes them from the back
+  try {
+    app.parse(arguments);
+  } catch (const CLI::CallForHelp&) {
+    const auto chosen = app.get_subcommands();
+    out << (chosen.empty() ? app.help() : chosen.front()->help("", CLI::AppFormatMode::Sub));
+    return {std::nullopt, kRan};
+  } catch (const CLI::CallForVersion&) {
+    out << kVersion << "\n";
+    return {std::nullopt, kRan};
+  } catch (const CLI::ExtrasError& e) {
+    const auto chosen = app.get_subcommands();
+    std::vector<std::string_view> known;
+    std::vector<std::string> names;
+    if (!chosen.empty())
+      for (const CLI::Option* option : chosen.front()->get_options()) names.push_back(option->get_name());
+    for (const auto& name : names) known.emplace_back(name);
+    const auto extras = app.remaining(true);
+    const std::string near = extras.empty() ? "" : nearest(extras.front(), known);
+    err << "kiloamp: " << (extras.empty() ? e.what() : "\"" + extras.front() + "\" is not an option here")
+        << (near.empty() ? "" : "; did you mean " + near + "?") << "\n"
+        << describe(app, "").substr(1);
+    return {std::nullopt, kInputWrong};
+  } catch (const CLI::ParseError& e) {
+    err << "kiloamp: " << describe(app, e.what());
+    return {std::nullopt, kInputWrong};
+  }
+  c.verb = app.get_subcommands().front()->get_name();
+  if (t.case_kind == "min") c.study.case_kind = CaseKind::min;
+  if (c.verb == "fault") c.contributions = true;
+  const auto misuse = [&](bool wrong, const char* what) {
+    if (wrong) err << "kiloamp: " << what << "\n";
+    return wrong;
+  };
+  if (misuse(c.table != "faults" && c.format != "csv", "--table goes with --format csv"))
+    return {std::nullopt, kInputWrong};
+  if (misuse(c.verb == "sweep" && c.contributions && c.format != "text",
+             "--contributions goes with --format text; csv has --table contributions, json has them always"))
+    return {std::nullopt, kInputWrong};
+  return {std::move(c), kRan};
+}
+
+}  // namespace kiloamp

@@ -1,0 +1,33 @@
+// The command line as data.
+#pragma once
+#include <iosfwd>
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "engine/study/study.hpp"
+
+namespace kiloamp {
+
+struct Command {
+  std::string verb;  ///< check, sweep, fault
+  std::string case_file;
+  std::vector<std::string> buses;
+  std::optional<std::string> scenario;
+  StudyOptions study;  ///< all but buses and scenario, which need the network
+  std::string format = "text";
+  std::string table = "faults";
+  std::optional<std::string> output;
+  bool contributions = false;
+  bool cross_check = false;
+};
+
+/// @return the command, or the exit code when there is nothing to run: help and version went to `out`,
+/// complaints to `err`.
+struct Parsed {
+  std::optional<Command> command;
+  int exit_code = 0;
+};
+[[nodiscard]] Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream& err);
+
+}  // namespace kiloamp

@@ -1,0 +1,16 @@
+// Paragraphs of the text reports.
+#pragma once
+#include <string>
+
+#include "reports/fault_report.hpp"
+
+namespace kiloamp {
+
+/// `text` broken at spaces to kTextWidth; the first line begins with `first`, the others are indented as far.
+[[nodiscard]] std::string paragraph(const std::string& first, const std::string& text);
+/// Case, state, prefault voltage, fault impedance, peak formula, defaults, warnings.
+[[nodiscard]] std::string heading_block(const Study& study, const ReportFacts& facts);
+[[nodiscard]] std::string defaults_block(const Network& network, const std::vector<DefaultUse>& defaults);
+[[nodiscard]] std::string cautions_block();
+
+}  // namespace kiloamp
