@@ -92,12 +92,12 @@ class Receiver {
     else if (error.id == 406)
       syntax(place, "the number " + token + " is too large", "must be a number within the range of a double",
              "correct the number");
-    else if (position >= text_.size() && what.find("unexpected end of input") != std::string::npos)
+    else if (position >= text_.size())
       syntax(place, "the text ends in the middle of the document", "must be one whole JSON document",
              "the file may be cut off: get it again or close what is open");
     else
-      syntax(place, "not JSON at " + printable(token), "must be one JSON document (RFC 8259)",
-             "look for a missing comma, quote or bracket just before this place");
+      syntax(place, "not JSON at " + around(position), "must be one JSON document (RFC 8259)",
+             "look for a missing comma, quote or bracket here or just before");
     return false;
   }
 
@@ -126,10 +126,13 @@ class Receiver {
     });
   }
 
-  static std::string printable(const std::string& token) {
+  // A few characters of the text from `position` on, for a message.
+  [[nodiscard]] std::string around(std::size_t position) const {
     std::string out = "\"";
-    for (const char c : token.size() <= 30 ? token : token.substr(token.size() - 30))
-      out += static_cast<unsigned char>(c) < 0x20 ? ' ' : c;
+    for (std::size_t i = position == 0 ? 0 : position - 1; i < text_.size() && out.size() < 16; ++i) {
+      if (static_cast<unsigned char>(text_[i]) < 0x20 || static_cast<unsigned char>(text_[i]) > 0x7E) break;
+      out += text_[i];
+    }
     return out + '"';
   }
 
@@ -326,7 +329,7 @@ std::string render(const std::vector<InputError>& errors) {
 std::string nearest(std::string_view word, const std::vector<std::string_view>& known) {
   if (word.size() > 128) return {};
   std::string_view best;
-  std::size_t best_distance = std::max<std::size_t>(1, word.size() / 3) + 1;
+  std::size_t best_distance = std::min(word.size(), std::max<std::size_t>(1, word.size() / 3) + 1);
   std::vector<std::size_t> row;
   for (const auto candidate : known) {
     const std::size_t gap =
