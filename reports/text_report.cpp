@@ -130,7 +130,7 @@ class TextReport : public FaultReport {
   // With `fault` given: shares of its current, measured along it in the phase that carries it.
   std::string currents(const char* title, const std::vector<Contribution>& list, const FaultResult* fault) {
     TextTable table;
-    table.column(title, "", Align::left);
+    table.column("element", "", Align::left);
     if (fault == nullptr) table.column("bus", "", Align::left);
     phase_columns(table, "I", "kA");
     if (fault != nullptr) table.column("share", "%", Align::decimal);
@@ -149,7 +149,7 @@ class TextReport : public FaultReport {
       }
       table.row(std::move(cells));
     }
-    return "\n" + table.text();
+    return std::string("\n") + title + "\n" + table.text();
   }
 
   const Study& study_;

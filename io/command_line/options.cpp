@@ -181,7 +181,8 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
   CLI::App* check = app.add_subcommand(
       "check",
       "Reads a case, lists every error or every value outside its usual range, counts its elements,\nand "
-      "says which buses have no source or no earth path and which defaults a study would use.");
+      "says which buses have no source or no earth path and which defaults a study would use.\nExample: "
+      "kiloamp check plant.json");
   check->add_option("CASE", c.case_file, "case file, or - for standard input")->required();
   check
       ->add_option("--scenario", c.scenario,
