@@ -1,0 +1,154 @@
+#include "engine/sparse/column_solver.hpp"
+
+#include <algorithm>
+#include <cstddef>
+#include <functional>
+#include <limits>
+
+namespace kiloamp::sparse {
+namespace {
+
+std::size_t at(Index i) { return static_cast<std::size_t>(i); }
+
+/// to -= factor (one number) * x
+template <int Block>
+inline void subtract_scaled(Pack<double, Block>& to, double factor, const Pack<double, Block>& x) {
+  to.re -= factor * x.re;
+}
+template <int Block>
+inline void subtract_scaled(Pack<std::complex<double>, Block>& to, std::complex<double> factor,
+                            const Pack<std::complex<double>, Block>& x) {
+  to.re -= factor.real() * x.re;
+  to.re += factor.imag() * x.im;
+  to.im -= factor.real() * x.im;
+  to.im -= factor.imag() * x.re;
+}
+
+}  // namespace
+
+template <typename Scalar, int Lanes, int Block>
+ColumnSolver<Scalar, Lanes, Block>::ColumnSolver(const LaneFactors<Scalar, padded_width(Lanes)>& factors)
+    : factors_(&factors),
+      plan_(factors.plan.get()),
+      x_(at(plan_->order)),
+      forward_stamp_(at(plan_->order), 0),
+      wanted_stamp_(at(plan_->order), 0) {
+  clear();
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::clear() {
+  path_.clear();
+  if (stamp_ == std::numeric_limits<Index>::max()) {
+    std::fill(forward_stamp_.begin(), forward_stamp_.end(), 0);
+    std::fill(wanted_stamp_.begin(), wanted_stamp_.end(), 0);
+    stamp_ = 0;
+  }
+  ++stamp_;
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::add_path(std::vector<Index>& path, std::vector<Index>& stamps, Index position) {
+  for (; position >= 0 && stamps[at(position)] != stamp_; position = plan_->parent(position)) {
+    stamps[at(position)] = stamp_;
+    path.push_back(position);
+  }
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::put(int which, Index row, const Entry& value) {
+  const Index position = plan_->position_of[at(row)];
+  const std::size_t known = path_.size();
+  add_path(path_, forward_stamp_, position);
+  for (std::size_t k = known; k < path_.size(); ++k) x_[at(path_[k])] = Row{};
+  for (std::size_t s = 0; s < at(Lanes); ++s) {
+    auto& x = x_[at(position)][s];
+    set_lane<kBlock>(x.re, which, x.re[which] + std::real(value[s]));
+    if constexpr (kIsComplex<Scalar>) set_lane<kBlock>(x.im, which, x.im[which] + std::imag(value[s]));
+  }
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::forward() {
+  std::sort(path_.begin(), path_.end());
+  for (const Index p : path_) {
+    const Row& x = x_[at(p)];
+    for (Index slot = plan_->column_begin[at(p)]; slot < plan_->diagonal_slot(p); ++slot) {
+      const auto& factor = factors_->slots[at(slot)];
+      Row& to = x_[at(plan_->rows[at(slot)])];
+      for (int s = 0; s < Lanes; ++s) subtract_scaled(to[at(s)], lane_of(factor, s), x[at(s)]);
+    }
+  }
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::backward(Index p) {
+  const auto* const slots = factors_->slots.get();
+  const Index* const rows = plan_->rows.data();
+  const Index end = plan_->diagonal_slot(p);
+  Row sum{};
+  for (Index slot = plan_->column_begin[at(p)]; slot < end; ++slot) {
+    const Row& x = x_[at(rows[slot])];
+    for (int s = 0; s < Lanes; ++s) subtract_scaled(sum[at(s)], lane_of(slots[slot], s), x[at(s)]);
+  }
+  if (forward_stamp_[at(p)] == stamp_) {
+    const auto& inverse = slots[end];
+    for (int s = 0; s < Lanes; ++s) subtract_scaled(sum[at(s)], -lane_of(inverse, s), x_[at(p)][at(s)]);
+  }
+  x_[at(p)] = sum;
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::solve() {
+  forward();
+  for (Index p = plan_->order; p-- > 0;) backward(p);
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::solve_at(std::span<const Index> wanted) {
+  forward();
+  wanted_path_.clear();
+  for (const Index row : wanted) add_path(wanted_path_, wanted_stamp_, plan_->position_of[at(row)]);
+  std::sort(wanted_path_.begin(), wanted_path_.end(), std::greater<>());
+  for (const Index p : wanted_path_) backward(p);
+}
+
+template <typename Scalar, int Lanes, int Block>
+typename ColumnSolver<Scalar, Lanes, Block>::Entry ColumnSolver<Scalar, Lanes, Block>::get(int which, Index row) const {
+  const Row& x = x_[at(plan_->position_of[at(row)])];
+  Entry out;
+  for (std::size_t s = 0; s < at(Lanes); ++s) out[s] = lane_of(x[s], which);
+  return out;
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::copy(int which, std::span<Entry> out) const {
+  for (std::size_t row = 0; row < out.size(); ++row) out[row] = get(which, static_cast<Index>(row));
+}
+
+template <typename Scalar, int Lanes, int Block>
+void ColumnSolver<Scalar, Lanes, Block>::copy_all(std::span<Entry> out) const {
+  const std::size_t order = at(plan_->order);
+  for (std::size_t row = 0; row < order; ++row) {
+    const Row& x = x_[at(plan_->position_of[row])];
+    for (int which = 0; which < Block; ++which) {
+      Entry& to = out[at(which) * order + row];
+      for (int s = 0; s < Lanes; ++s) to[at(s)] = lane_of(x[at(s)], which);
+    }
+  }
+}
+
+template class ColumnSolver<std::complex<double>, 1, 2>;
+template class ColumnSolver<std::complex<double>, 1, 4>;
+template class ColumnSolver<std::complex<double>, 3, 2>;
+template class ColumnSolver<std::complex<double>, 3, 4>;
+template class ColumnSolver<std::complex<double>, 4, 2>;
+template class ColumnSolver<std::complex<double>, 4, 4>;
+template class ColumnSolver<double, 1, 2>;
+template class ColumnSolver<double, 1, 4>;
+template class ColumnSolver<double, 2, 2>;
+template class ColumnSolver<double, 2, 4>;
+template class ColumnSolver<double, 4, 2>;
+template class ColumnSolver<double, 4, 4>;
+
+}  // namespace kiloamp::sparse

@@ -1,0 +1,34 @@
+// How well computed columns of the inverse satisfy A z = e_k.
+#pragma once
+#include <array>
+#include <span>
+
+#include "engine/sparse/column_solver.hpp"
+#include "engine/sparse/elimination.hpp"
+
+namespace kiloamp::sparse {
+
+/// What a probe found in one lane; not-a-number counts as infinite.
+struct ProbeResult {
+  double residual = 0;       // |A z - e_k|_inf
+  double rounding = 0;       // largest (|A| |z|)_i, parts taken apart: times epsilon, what rounding excuses
+  double magnification = 0;  // |a_kk z_kk|
+
+  void include(const ProbeResult& other);
+};
+
+/// Solves for the columns `rows` two by two and measures each lane.
+template <typename Scalar, int Lanes>
+[[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
+                                                           const Values<Scalar, Lanes>& values,
+                                                           std::span<const Index> rows);
+
+/// Rows to probe: those of suspect pivots in any lane (mark above `suspect`^2) and two ordinary ones.
+template <typename Scalar, int Width>
+[[nodiscard]] std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes, double suspect);
+
+/// The row of the worst pivot of a lane.
+template <typename Scalar, int Width>
+[[nodiscard]] Index worst_row(const LaneFactors<Scalar, Width>& factors, int lane);
+
+}  // namespace kiloamp::sparse
