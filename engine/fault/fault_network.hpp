@@ -39,7 +39,17 @@ class FaultNetwork {
 
   FaultNetwork(const SequenceModel& model, int threads);
 
+  /// A block that a terminal is in, and where.
+  struct Slot {
+    std::uint32_t block = 0;
+    std::uint32_t position = 0;
+    bool used = false;
+  };
+
   [[nodiscard]] const Inverse& inverse() const { return inverse_; }
+  [[nodiscard]] const sparse::Factorisation<Complex, 3>& factors() const { return *factors_; }
+  /// The element's own block, and the coupled group that the terminal is in.
+  [[nodiscard]] const std::array<Slot, 2>& slots(std::uint32_t terminal) const { return slots_[terminal]; }
   [[nodiscard]] const SolutionQuality& quality() const { return factors_->accuracy(); }
 
   /// Shares of a fault at `bus`, of all buses at most `depth` branches or closed switches away. Element
@@ -48,11 +58,6 @@ class FaultNetwork {
   void reach(BusIndex bus, int depth, Reach& reach) const;
 
  private:
-  struct Slot {
-    std::uint32_t block = 0;
-    std::uint32_t position = 0;
-    bool used = false;
-  };
   /// A node that closed switches make of several buses.
   struct SwitchGroup {
     std::vector<std::uint32_t> switches;                        ///< into model.closed_switches

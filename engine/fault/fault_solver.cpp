@@ -67,6 +67,9 @@ BySequence<Complex> times(const BySequence<Complex>& a, const BySequence<Complex
 
 }  // namespace
 
+const detail::FaultNetwork& FaultSolver::solved() const { return body_->network; }
+double FaultSolver::prefault_pu(BusIndex bus) const { return body_->prefault[at(bus)].pu; }
+
 Complex FaultSolver::prefault_kv(BusIndex bus, BusIndex reference) const {
   const Prefault &here = body_->prefault[at(bus)], &there = body_->prefault[at(reference)];
   const int lag = model_->lag_clock[at(bus)] - model_->lag_clock[at(reference)];

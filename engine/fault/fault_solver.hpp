@@ -7,6 +7,10 @@
 
 namespace kiloamp {
 
+namespace detail {
+class FaultNetwork;
+}
+
 /// Prefault voltage of a bus: magnitude and angle. Without an angle the bus follows its vector groups (no
 /// load flow).
 struct Prefault {
@@ -39,6 +43,10 @@ class FaultSolver {
 
   /// Z_kk per sequence at a bus in pu; empty z1: no source.
   [[nodiscard]] std::optional<TheveninData> thevenin_pu(BusIndex bus) const;
+
+  /// The factorised networks, for studies that change them by low rank.
+  [[nodiscard]] const detail::FaultNetwork& solved() const;
+  [[nodiscard]] double prefault_pu(BusIndex bus) const;
 
   /// Prefault line-to-neutral voltage of `bus` when the prefault phase a of `reference` is at 0 degrees.
   [[nodiscard]] Complex prefault_kv(BusIndex bus, BusIndex reference) const;

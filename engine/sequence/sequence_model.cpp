@@ -129,6 +129,7 @@ void Builder::add_block(ElementRef element, const Circuit& c) {
           {c.y_siemens[0][i][j] * scale, c.y_siemens[1][i][j] * scale, c.y_siemens[2][i][j] * scale});
     }
   }
+  block.earthed = c.earthed;
   model_.blocks.push_back(block);
   join(c);
 }
@@ -270,6 +271,7 @@ void Builder::add_coupled_group(const std::vector<std::uint32_t>& members,
     }
     model_.induced_lines.push_back(std::move(induced));
   }
+  block.coupling = true;
   model_.blocks.push_back(block);
 }
 

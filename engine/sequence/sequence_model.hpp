@@ -43,7 +43,9 @@ struct MergedSwitch {
 struct Block {
   std::uint32_t first;  ///< into SequenceModel::block_terminals
   std::uint32_t count;
-  std::uint32_t first_y;  ///< into SequenceModel::block_y
+  std::uint32_t first_y;       ///< into SequenceModel::block_y
+  BySequence<bool> earthed{};  ///< the element has a path to earth of its own in that sequence
+  bool coupling = false;       ///< the block of a group of coupled lines
 };
 
 /// A line that is out of service and earthed at both ends: the current that coupled lines induce in it, from

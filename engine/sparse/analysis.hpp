@@ -12,11 +12,13 @@ struct EliminationPlan;
 
 /// Elimination order and symbolic factorisation of a pattern; reused by every matrix that has the pattern.
 ///
-/// Any undirected graph will do: no rows, islands, isolated rows, stars, chains of a million rows, cliques. Rows of at
-/// most three neighbours go first, approximate minimum degree orders the rest. Nothing is recursive.
+/// Any undirected graph will do: no rows, islands, isolated rows, stars, chains of a million rows, cliques.
+/// Rows of at most three neighbours go first, approximate minimum degree orders the rest. Nothing is
+/// recursive.
 ///
 /// @param order  rows of the matrix, >= 0
-/// @param edges  places off the diagonal, 0 <= i, j < order, i != j, each unordered pair at most once: asserted
+/// @param edges  places off the diagonal, 0 <= i, j < order, i != j, each unordered pair at most once:
+/// asserted
 /// @throws std::length_error  the factor would have more than 2^31 entries
 class Analysis {
  public:

@@ -48,7 +48,8 @@ void ColumnSolver<Scalar, Lanes, Block>::clear() {
 }
 
 template <typename Scalar, int Lanes, int Block>
-void ColumnSolver<Scalar, Lanes, Block>::add_path(std::vector<Index>& path, std::vector<Index>& stamps, Index position) {
+void ColumnSolver<Scalar, Lanes, Block>::add_path(std::vector<Index>& path, std::vector<Index>& stamps,
+                                                  Index position) {
   for (; position >= 0 && stamps[at(position)] != stamp_; position = plan_->parent(position)) {
     stamps[at(position)] = stamp_;
     path.push_back(position);
@@ -114,7 +115,8 @@ void ColumnSolver<Scalar, Lanes, Block>::solve_at(std::span<const Index> wanted)
 }
 
 template <typename Scalar, int Lanes, int Block>
-typename ColumnSolver<Scalar, Lanes, Block>::Entry ColumnSolver<Scalar, Lanes, Block>::get(int which, Index row) const {
+typename ColumnSolver<Scalar, Lanes, Block>::Entry ColumnSolver<Scalar, Lanes, Block>::get(int which,
+                                                                                           Index row) const {
   const Row& x = x_[at(plan_->position_of[at(row)])];
   Entry out;
   for (std::size_t s = 0; s < at(Lanes); ++s) out[s] = lane_of(x[s], which);

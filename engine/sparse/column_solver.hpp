@@ -19,11 +19,12 @@ struct Term {
 /// Right-hand sides side by side where many are wanted: four share each load of an entry of L.
 inline constexpr int kWideBlock = 4;
 
-/// Works through up to kBlock (2 or 4) right-hand sides at once on one set of factors. One per thread; keeps its memory.
+/// Works through up to kBlock (2 or 4) right-hand sides at once on one set of factors. One per thread; keeps
+/// its memory.
 ///
 /// Use: clear(); put() the right-hand sides; solve(); read with get(). Right-hand sides that are never put
-/// are zero. solve() walks forward only along the elimination tree paths of the rows that were put, so a column of
-/// the inverse costs its path and one backward pass over L.
+/// are zero. solve() walks forward only along the elimination tree paths of the rows that were put, so a
+/// column of the inverse costs its path and one backward pass over L.
 template <typename Scalar, int Lanes, int Block = kWideBlock>
 class ColumnSolver {
  public:
@@ -45,7 +46,9 @@ class ColumnSolver {
   /// Copies all kBlock solutions one behind the other, each in row order.
   void copy_all(std::span<Entry> out) const;
   /// All right-hand sides at one position of the elimination order, after solve().
-  [[nodiscard]] const Row& at_position(Index position) const { return x_[static_cast<std::size_t>(position)]; }
+  [[nodiscard]] const Row& at_position(Index position) const {
+    return x_[static_cast<std::size_t>(position)];
+  }
 
  private:
   void add_path(std::vector<Index>& path, std::vector<Index>& stamps, Index position);
@@ -54,10 +57,10 @@ class ColumnSolver {
 
   const LaneFactors<Scalar, padded_width(Lanes)>* factors_;
   const EliminationPlan* plan_;
-  std::vector<Row> x_;            // by position
+  std::vector<Row> x_;  // by position
   std::vector<Index> forward_stamp_;
   std::vector<Index> wanted_stamp_;
-  std::vector<Index> path_;       // positions that hold a right-hand side or receive one, unsorted
+  std::vector<Index> path_;  // positions that hold a right-hand side or receive one, unsorted
   std::vector<Index> wanted_path_;
   Index stamp_ = 0;
 };

@@ -127,10 +127,18 @@ class Eliminator {
     for (Index p = step.first; p < step.first + step.columns; ++p) {
       Entry* const column = factors_.slots.get() + plan_.column_begin[at(p)];
       switch (plan_.diagonal_slot(p) - plan_.column_begin[at(p)]) {
-        case 0: eliminate_column<0>(p, column, target); break;
-        case 1: eliminate_column<1>(p, column, target); break;
-        case 2: eliminate_column<2>(p, column, target); break;
-        default: eliminate_column<3>(p, column, target); break;
+        case 0:
+          eliminate_column<0>(p, column, target);
+          break;
+        case 1:
+          eliminate_column<1>(p, column, target);
+          break;
+        case 2:
+          eliminate_column<2>(p, column, target);
+          break;
+        default:
+          eliminate_column<3>(p, column, target);
+          break;
       }
     }
   }
@@ -156,10 +164,18 @@ class Eliminator {
       const Index count = std::min(kPivotBlock, end - front.rows);
       end -= count;
       switch (count) {
-        case 1: eliminate_block<1>(matrix, front, end); break;
-        case 2: eliminate_block<2>(matrix, front, end); break;
-        case 3: eliminate_block<3>(matrix, front, end); break;
-        default: eliminate_block<4>(matrix, front, end); break;
+        case 1:
+          eliminate_block<1>(matrix, front, end);
+          break;
+        case 2:
+          eliminate_block<2>(matrix, front, end);
+          break;
+        case 3:
+          eliminate_block<3>(matrix, front, end);
+          break;
+        default:
+          eliminate_block<4>(matrix, front, end);
+          break;
       }
     }
     if (front.parent < 0) return;
@@ -207,7 +223,8 @@ class Eliminator {
         factor_at(factor[0], pivot_row[q], r, inverse[q]);
         eliminate_from_row<1>(matrix.row(r), Front::stripes(r), one, factor);
       }
-      store_column(front.first + front.rows + front.pivots - 1 - row, pivot_row[q], row, inverse[q], inverse_size);
+      store_column(front.first + front.rows + front.pivots - 1 - row, pivot_row[q], row, inverse[q],
+                   inverse_size);
     }
     for (Index r = 0; r < begin; ++r) {
       Stripe factor[Count];
@@ -224,7 +241,8 @@ class Eliminator {
     Front::spread(factor, scaled);
   }
 
-  void store_column(Index p, const Stripe* row, Index length, const Entry& inverse, const Size& inverse_size) {
+  void store_column(Index p, const Stripe* row, Index length, const Entry& inverse,
+                    const Size& inverse_size) {
     Entry* const column = factors_.slots.get() + plan_.column_begin[at(p)];
     Size size{};
     for (Index c = 0; c < length; ++c) {
@@ -253,7 +271,8 @@ class Eliminator {
 }  // namespace
 
 template <typename Scalar, int Lanes>
-void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values, int threads) {
+void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
+               int threads) {
   using Worker = Eliminator<Scalar, Lanes>;
   std::vector<typename Worker::Stripe> kept(factors.layout.kept);
   const int tasks = factors.plan->tasks;
@@ -284,8 +303,8 @@ Index worst_pivot(const LaneFactors<Scalar, Width>& factors, Index step_number, 
   return worst;
 }
 
-#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                       \
-  template void eliminate<Scalar, Lanes>(LaneFactors<Scalar, padded_width(Lanes)>&,              \
+#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                          \
+  template void eliminate<Scalar, Lanes>(LaneFactors<Scalar, padded_width(Lanes)>&, \
                                          const Values<Scalar, Lanes>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)

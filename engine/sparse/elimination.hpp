@@ -8,7 +8,8 @@
 
 namespace kiloamp::sparse {
 
-/// `Lanes` symmetric matrices: entry (i, i) of lane s is diagonal[i][s]; entry at edges[e] is off_diagonal[e][s].
+/// `Lanes` symmetric matrices: entry (i, i) of lane s is diagonal[i][s]; entry at edges[e] is
+/// off_diagonal[e][s].
 template <typename Scalar, int Lanes>
 struct Values {
   std::vector<std::array<Scalar, Lanes>> diagonal;
@@ -17,13 +18,16 @@ struct Values {
 
 /// Fills factors.slots with L and 1 / D of `values`, and factors.watches.
 ///
-/// Symmetric, not Hermitian: no entry is conjugated. Zero pivots are not avoided: they give infinite marks in the
-/// watches and NaN factors, which the caller has to look for. Bit for bit the same for any number of threads.
+/// Symmetric, not Hermitian: no entry is conjugated. Zero pivots are not avoided: they give infinite marks in
+/// the watches and NaN factors, which the caller has to look for. Bit for bit the same for any number of
+/// threads.
 ///
-/// Source: multifrontal elimination: Duff, Reid, ACM Trans. Math. Softw. 9 (1983) 302-325; from memory. Differs:
+/// Source: multifrontal elimination: Duff, Reid, ACM Trans. Math. Softw. 9 (1983) 302-325; from memory.
+/// Differs:
 ///         rows of at most three neighbours bypass the fronts, pivots stand last in a front.
 template <typename Scalar, int Lanes>
-void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values, int threads);
+void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
+               int threads);
 
 /// The position with the worst mark among the columns of `step` in `lane`.
 template <typename Scalar, int Width>

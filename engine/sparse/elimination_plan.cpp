@@ -34,7 +34,8 @@ class Planner {
  private:
   Index narrow() const { return static_cast<Index>(reduction_.sequence.size()); }
 
-  /// Blocks of columns: the narrow columns in order of elimination, then the fronts. Numbers them in postorder.
+  /// Blocks of columns: the narrow columns in order of elimination, then the fronts. Numbers them in
+  /// postorder.
   void number_columns() {
     const Index narrow_count = narrow();
     std::vector<Index> block_of(at(plan_.order));  // of a row; for core rows: narrow + front
@@ -95,7 +96,8 @@ class Planner {
     plan_.column_begin.reserve(length.size() + 1);
     for (const std::int64_t entries : length) {
       total += entries;
-      if (total > std::numeric_limits<Index>::max()) throw std::length_error("sparse factor exceeds 2^31 entries");
+      if (total > std::numeric_limits<Index>::max())
+        throw std::length_error("sparse factor exceeds 2^31 entries");
       plan_.column_begin.push_back(static_cast<Index>(total));
     }
     plan_.rows.resize(at(plan_.slots()));
@@ -107,7 +109,8 @@ class Planner {
         if (other < 0) continue;
         Index slot = to++;
         const Index place = plan_.position_of[at(other)];
-        for (; slot > from && plan_.rows[at(slot) - 1] < place; --slot) plan_.rows[at(slot)] = plan_.rows[at(slot) - 1];
+        for (; slot > from && plan_.rows[at(slot) - 1] < place; --slot)
+          plan_.rows[at(slot)] = plan_.rows[at(slot) - 1];
         plan_.rows[at(slot)] = place;
       }
       plan_.rows[at(to)] = position;
@@ -122,7 +125,8 @@ class Planner {
       const auto& block = blocks_[at(narrow_count + f)];
       for (Index p = block.columns - 1; p >= 0; --p) {
         falling.push_back(block.first + p);
-        std::copy(falling.begin(), falling.end(), plan_.rows.begin() + plan_.column_begin[at(block.first + p)]);
+        std::copy(falling.begin(), falling.end(),
+                  plan_.rows.begin() + plan_.column_begin[at(block.first + p)]);
       }
     }
   }
@@ -148,7 +152,8 @@ class Planner {
       const auto& front = plan_.fronts[at(f)];
       const Index size = front.rows + front.pivots;
       const Index* const falling = plan_.rows.data() + plan_.column_begin[at(front.first)];
-      for (Index r = 0; r < size && plan_.child_begin[at(f)] < plan_.child_begin[at(f) + 1]; ++r) place[at(falling[r])] = r;
+      for (Index r = 0; r < size && plan_.child_begin[at(f)] < plan_.child_begin[at(f) + 1]; ++r)
+        place[at(falling[r])] = r;
       for (Index k = plan_.child_begin[at(f)]; k < plan_.child_begin[at(f) + 1]; ++k) {
         auto& child = plan_.fronts[at(plan_.children[at(k)])];
         child.map_begin = static_cast<Index>(plan_.row_map.size());
@@ -168,7 +173,8 @@ class Planner {
       const Index b = block_at[at(position)];
       const Index front = b < narrow_count ? -1 : b - narrow_count;
       if (front >= 0) plan_.fronts[at(front)].task = task_of[at(b)];
-      if (front < 0 && !plan_.steps.empty() && plan_.steps.back().front < 0 && owner.back() == task_of[at(b)]) {
+      if (front < 0 && !plan_.steps.empty() && plan_.steps.back().front < 0 &&
+          owner.back() == task_of[at(b)]) {
         ++plan_.steps.back().columns;
       } else {
         plan_.steps.push_back({position, blocks_[at(b)].columns, front, 0, 0});
@@ -179,7 +185,8 @@ class Planner {
     for (Index& task : owner) task = task < 0 ? plan_.tasks : task;
     plan_.task_step_begin.assign(at(plan_.tasks) + 2, 0);
     for (const Index task : owner) ++plan_.task_step_begin[at(task) + 1];
-    for (std::size_t t = 0; t <= at(plan_.tasks); ++t) plan_.task_step_begin[t + 1] += plan_.task_step_begin[t];
+    for (std::size_t t = 0; t <= at(plan_.tasks); ++t)
+      plan_.task_step_begin[t + 1] += plan_.task_step_begin[t];
     std::vector<Index> next(plan_.task_step_begin.begin(), plan_.task_step_begin.end() - 1);
     plan_.task_steps.resize(owner.size());
     for (std::size_t s = 0; s < owner.size(); ++s) {
@@ -225,7 +232,8 @@ class Planner {
         }
         step.targets = static_cast<Index>(plan_.targets.size()) - step.target_begin;
       }
-      if (task < plan_.tasks) plan_.overflow_begin.push_back(static_cast<Index>(plan_.overflow_target.size()));
+      if (task < plan_.tasks)
+        plan_.overflow_begin.push_back(static_cast<Index>(plan_.overflow_target.size()));
     }
   }
 
@@ -257,6 +265,8 @@ Index EliminationPlan::find_slot(Index a, Index b) const {
   return static_cast<Index>(found - rows.begin());
 }
 
-EliminationPlan plan_elimination(Index order, std::span<const Edge> edges) { return Planner(order, edges).take(); }
+EliminationPlan plan_elimination(Index order, std::span<const Edge> edges) {
+  return Planner(order, edges).take();
+}
 
 }  // namespace kiloamp::sparse

@@ -11,13 +11,13 @@ namespace kiloamp::sparse {
 /// One elimination plan. "Position" p counts rows in elimination order; "slot" counts the stored entries.
 ///
 /// Column p of L occupies slots column_begin[p] .. column_begin[p + 1] - 1; rows[slot] is the position of the
-/// entry's row, falling, so that the last slot of a column is its diagonal (the pivot) and the one before it is the
-/// parent of p in the elimination tree.
+/// entry's row, falling, so that the last slot of a column is its diagonal (the pivot) and the one before it
+/// is the parent of p in the elimination tree.
 ///
-/// Rows that the graph reduction eliminated ("narrow" columns, at most 3 off-diagonal entries) are updated by a flat
-/// program: for column p with entries a, b, c, `targets` lists the slots of the places (a,a) (a,b) (b,b) (a,c)
-/// (b,c) (c,c), as many as there are. All other columns belong to fronts: dense lower triangles whose
-/// rows fall in position, pivots last.
+/// Rows that the graph reduction eliminated ("narrow" columns, at most 3 off-diagonal entries) are updated by
+/// a flat program: for column p with entries a, b, c, `targets` lists the slots of the places (a,a) (a,b)
+/// (b,b) (a,c) (b,c) (c,c), as many as there are. All other columns belong to fronts: dense lower triangles
+/// whose rows fall in position, pivots last.
 ///
 /// Tasks are disjoint unions of subtrees; what they update outside themselves goes to their own overflow
 /// slots (numbered after the ordinary ones) and is added to overflow_target[] afterwards, task by task. The
@@ -62,14 +62,18 @@ struct EliminationPlan {
   std::vector<Index> overflow_target;
 
   [[nodiscard]] Index slots() const { return column_begin.back(); }
-  [[nodiscard]] std::size_t all_slots() const { return static_cast<std::size_t>(slots()) + overflow_target.size(); }
+  [[nodiscard]] std::size_t all_slots() const {
+    return static_cast<std::size_t>(slots()) + overflow_target.size();
+  }
   [[nodiscard]] Index diagonal_slot(Index position) const {
     return column_begin[static_cast<std::size_t>(position) + 1] - 1;
   }
   /// Parent in the elimination tree, -1 for a root.
   [[nodiscard]] Index parent(Index position) const {
     const Index last = diagonal_slot(position);
-    return last == column_begin[static_cast<std::size_t>(position)] ? -1 : rows[static_cast<std::size_t>(last) - 1];
+    return last == column_begin[static_cast<std::size_t>(position)]
+               ? -1
+               : rows[static_cast<std::size_t>(last) - 1];
   }
   /// Slot of the place (a, b), a < b, which must be in the structure of L.
   [[nodiscard]] Index find_slot(Index a, Index b) const;

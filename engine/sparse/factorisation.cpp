@@ -25,7 +25,8 @@ struct Factorisation<Scalar, Lanes>::Body {
   std::array<Accuracy, Lanes> accuracy{};
   std::array<std::unique_ptr<LaneRemedy<Scalar>>, Lanes> remedies{};
 
-  explicit Body(std::shared_ptr<const Analysis> shared) : analysis(std::move(shared)), factors(analysis->plan()) {}
+  explicit Body(std::shared_ptr<const Analysis> shared)
+      : analysis(std::move(shared)), factors(analysis->plan()) {}
 
   /// A solver by the lane's plain factors for LaneRemedy.
   typename LaneRemedy<Scalar>::PlainSolve plain_solve(int lane) const {
@@ -38,7 +39,8 @@ struct Factorisation<Scalar, Lanes>::Body {
         solver->put(0, static_cast<Index>(row), value);
       }
       solver->solve();
-      for (std::size_t row = 0; row < b.size(); ++row) b[row] = solver->get(0, static_cast<Index>(row))[at(lane)];
+      for (std::size_t row = 0; row < b.size(); ++row)
+        b[row] = solver->get(0, static_cast<Index>(row))[at(lane)];
     };
   }
 
@@ -51,8 +53,9 @@ struct Factorisation<Scalar, Lanes>::Body {
 template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::Body::fail(int lane, const char* why) const {
   const Index row = worst_row(factors, lane);
-  throw NumericalError(std::string(why) + " (matrix row " + std::to_string(row) + ", lane " + std::to_string(lane) + ")",
-                       row, lane);
+  throw NumericalError(
+      std::string(why) + " (matrix row " + std::to_string(row) + ", lane " + std::to_string(lane) + ")", row,
+      lane);
 }
 
 template <typename Scalar, int Lanes>
@@ -82,7 +85,8 @@ void Factorisation<Scalar, Lanes>::Body::measure(const Values<Scalar, Lanes>& va
     const double floor = kRoundingMargin * std::numeric_limits<double>::epsilon() * result.rounding;
     const double excused = std::isfinite(result.rounding) ? floor : 0;
     if (!(result.residual <= std::max(kTrustedResidual, excused))) mend(values, s, rows);
-    if (!(accuracy[at(s)].residual <= kSingularResidual)) fail(s, "singular to working precision: no accurate solution");
+    if (!(accuracy[at(s)].residual <= kSingularResidual))
+      fail(s, "singular to working precision: no accurate solution");
     if (!accuracy[at(s)].pivoting && !(result.magnification <= kSingularMagnification)) {
       fail(s, "singular to working precision: a row cancels to rounding noise");
     }
@@ -112,7 +116,8 @@ void Factorisation<Scalar, Lanes>::Body::mend(const Values<Scalar, Lanes>& value
   for (std::size_t k = 0; k < diagonal.size(); ++k) diagonal[k] = values.diagonal[k][at(lane)];
   for (std::size_t k = 0; k < off_diagonal.size(); ++k) off_diagonal[k] = values.off_diagonal[k][at(lane)];
   auto& remedy = remedies[at(lane)];
-  remedy = std::make_unique<LaneRemedy<Scalar>>(analysis->edges(), std::move(diagonal), std::move(off_diagonal));
+  remedy =
+      std::make_unique<LaneRemedy<Scalar>>(analysis->edges(), std::move(diagonal), std::move(off_diagonal));
   Accuracy& result = accuracy[at(lane)];
   result.residual = remedy_residual(lane, rows);
   result.refined = result.residual <= kTrustedResidual;
@@ -192,7 +197,8 @@ void Factorisation<Scalar, Lanes>::columns(std::span<const Index> rows, std::spa
     solver.clear();
     for (std::size_t c = 0; c < count; ++c) solver.put(static_cast<int>(c), rows[from + c], one);
     solver.solve();
-    for (std::size_t c = 0; c < count; ++c) solver.copy(static_cast<int>(c), out.subspan((from + c) * order, order));
+    for (std::size_t c = 0; c < count; ++c)
+      solver.copy(static_cast<int>(c), out.subspan((from + c) * order, order));
   }
 }
 
@@ -208,7 +214,8 @@ void Factorisation<Scalar, Lanes>::solve(std::span<Entry> b) const {
 }
 
 template <typename Scalar, int Lanes>
-typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::inverse_entry(Index i, Index j) const {
+typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::inverse_entry(Index i,
+                                                                                         Index j) const {
   SparseSolver solver(*this);
   Entry one;
   one.fill(Scalar(1));
@@ -224,7 +231,9 @@ typename Factorisation<Scalar, Lanes>::SparseSolver Factorisation<Scalar, Lanes>
 
 template <typename Scalar, int Lanes>
 Factorisation<Scalar, Lanes>::SparseSolver::SparseSolver(const Factorisation& factorisation)
-    : body_(factorisation.body_.get()), plain_(body_->factors), mended_(static_cast<std::size_t>(kBlock * Lanes)) {}
+    : body_(factorisation.body_.get()),
+      plain_(body_->factors),
+      mended_(static_cast<std::size_t>(kBlock * Lanes)) {}
 
 template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::SparseSolver::clear() {
@@ -270,8 +279,8 @@ void Factorisation<Scalar, Lanes>::SparseSolver::solve_at(std::span<const Index>
 }
 
 template <typename Scalar, int Lanes>
-typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::SparseSolver::get(int which,
-                                                                                              Index row) const {
+typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::SparseSolver::get(
+    int which, Index row) const {
   Entry out = plain_.get(which, row);
   for (int s = 0; s < Lanes; ++s) {
     const auto& x = mended_[at(which * Lanes + s)];
@@ -295,7 +304,8 @@ void Factorisation<Scalar, Lanes>::SparseSolver::copy_all(std::span<Entry> out) 
   plain_.copy_all(out);
   for (std::size_t k = 0; k < mended_.size(); ++k) {
     const std::size_t first = k / at(Lanes) * order;
-    for (std::size_t row = 0; row < mended_[k].size(); ++row) out[first + row][k % at(Lanes)] = mended_[k][row];
+    for (std::size_t row = 0; row < mended_[k].size(); ++row)
+      out[first + row][k % at(Lanes)] = mended_[k][row];
   }
 }
 

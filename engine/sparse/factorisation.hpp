@@ -14,11 +14,11 @@
 
 namespace kiloamp::sparse {
 
-/// Largest mismatch |A z - e_k| of a computed column that is trusted without a further step. A unit is injected, so
-/// this is Kirchhoff's current law to nine digits, four more than any result printed.
+/// Largest mismatch |A z - e_k| of a computed column that is trusted without a further step. A unit is
+/// injected, so this is Kirchhoff's current law to nine digits, four more than any result printed.
 inline constexpr double kTrustedResidual = 1e-9;
-/// A mismatch below kRoundingMargin * epsilon * (|A| |z|) is what any solver in double precision leaves, pivoting or
-/// not (a large impedance to earth, for one): no remedy is tried.
+/// A mismatch below kRoundingMargin * epsilon * (|A| |z|) is what any solver in double precision leaves,
+/// pivoting or not (a large impedance to earth, for one): no remedy is tried.
 inline constexpr double kRoundingMargin = 1e3;
 /// A larger mismatch after every remedy means that the matrix is singular to working precision.
 inline constexpr double kSingularResidual = 1e-6;
@@ -44,23 +44,27 @@ struct Accuracy {
 /// A = L D L^T of each lane, and what follows from it.
 ///
 /// Elimination does not pivot. Trust is measured: the columns of the worst pivots and a few others are
-/// computed and A z - e_k is formed. A lane above kTrustedResidual (and above what rounding excuses) gets one step of
-/// refinement; if that does not help, Eigen's SparseLU, which pivots, takes the lane over. Both are right but slow for selected_inverse(): every column
-/// of that lane is then computed. No lane affects another, nor does the number of threads affect any bit.
+/// computed and A z - e_k is formed. A lane above kTrustedResidual (and above what rounding excuses) gets one
+/// step of refinement; if that does not help, Eigen's SparseLU, which pivots, takes the lane over. Both are
+/// right but slow for selected_inverse(): every column of that lane is then computed. No lane affects
+/// another, nor does the number of threads affect any bit.
 ///
-/// @throws NumericalError  a lane is singular to working precision; names the row where it showed, and the lane.
+/// @throws NumericalError  a lane is singular to working precision; names the row where it showed, and the
+/// lane.
 template <typename Scalar, int Lanes>
 class Factorisation {
  public:
   using Entry = std::array<Scalar, Lanes>;
   using SelectedInverse = InverseOnPattern<Scalar, Lanes>;
 
-  Factorisation(std::shared_ptr<const Analysis> analysis, const Values<Scalar, Lanes>& values, int threads = 1);
+  Factorisation(std::shared_ptr<const Analysis> analysis, const Values<Scalar, Lanes>& values,
+                int threads = 1);
   ~Factorisation();
   Factorisation(Factorisation&&) noexcept;
   Factorisation& operator=(Factorisation&&) noexcept;
 
-  /// Other values on the same pattern, in the memory of the old ones. After a throw only refactorise() may follow.
+  /// Other values on the same pattern, in the memory of the old ones. After a throw only refactorise() may
+  /// follow.
   void refactorise(const Values<Scalar, Lanes>& values, int threads = 1);
 
   [[nodiscard]] const Analysis& analysis() const;

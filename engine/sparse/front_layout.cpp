@@ -9,7 +9,9 @@ template <int Width>
 FrontLayout lay_out_fronts(const EliminationPlan& plan) {
   const auto triangle = [](Index rows) { return FrontMatrix<double, Width>::row_start(rows); };
   const auto at = [](Index i) { return static_cast<std::size_t>(i); };
-  const auto owner = [&](const EliminationPlan::Front& front) { return at(front.task < 0 ? plan.tasks : front.task); };
+  const auto owner = [&](const EliminationPlan::Front& front) {
+    return at(front.task < 0 ? plan.tasks : front.task);
+  };
   FrontLayout layout;
   layout.update_at.assign(plan.fronts.size(), 0);
   layout.inverse_at.assign(plan.fronts.size(), 0);

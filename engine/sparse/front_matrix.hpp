@@ -10,8 +10,8 @@ namespace kiloamp::sparse {
 
 /// Rows of a symmetric matrix, lower triangle, `Width` lanes.
 ///
-/// A stripe holds kPerStripe = 4 / Width neighbouring entries of a row, so that kernels always work on four doubles.
-/// Row r has r + 1 entries in stripes(r) stripes; places beyond the diagonal are padding.
+/// A stripe holds kPerStripe = 4 / Width neighbouring entries of a row, so that kernels always work on four
+/// doubles. Row r has r + 1 entries in stripes(r) stripes; places beyond the diagonal are padding.
 template <typename Scalar, int Width>
 struct FrontMatrix {
   using Stripe = Pack<Scalar, 4>;
@@ -80,8 +80,8 @@ inline void eliminate_from_row(Stripe* __restrict row, std::size_t stripes, cons
   }
 }
 
-/// One row of a symmetric product Y = Z W for `Count` vectors: adds z[t] * factor[q] to y[q][t] and accumulates
-/// z[t] * w[q][t] in dot[q].
+/// One row of a symmetric product Y = Z W for `Count` vectors: adds z[t] * factor[q] to y[q][t] and
+/// accumulates z[t] * w[q][t] in dot[q].
 template <int Count, typename Stripe>
 inline void symmetric_row(const Stripe* __restrict z, std::size_t stripes, const Stripe* factor,
                           const Stripe* const* w, Stripe* const* y, Stripe* dot) {

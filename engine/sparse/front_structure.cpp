@@ -73,7 +73,8 @@ std::vector<Index> choose_merges(const FrontStructure& exact) {
     const std::int64_t added = pivots[at(f)] * (pivots[at(p)] + parent_rows - rows);
     const std::int64_t total = added + zeros[at(f)] + zeros[at(p)];
     const std::int64_t merged = pivots[at(f)] + pivots[at(p)];
-    const double size = static_cast<double>(merged) * (static_cast<double>(merged) / 2 + static_cast<double>(parent_rows));
+    const double size =
+        static_cast<double>(merged) * (static_cast<double>(merged) / 2 + static_cast<double>(parent_rows));
     if (total > kFreeZeros && static_cast<double>(total) > kZeroShare * size) continue;
     into[at(f)] = p;
     pivots[at(p)] = merged;

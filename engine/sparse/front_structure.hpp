@@ -8,8 +8,9 @@ namespace kiloamp::sparse {
 
 /// Fronts of the core, children before parents.
 ///
-/// Front f eliminates pivots[pivot_begin[f]] .. and updates rows[row_begin[f]] .. (vertices eliminated later that
-/// are joined to a pivot, fill included). parent[f] is the front of the first eliminated row, -1 for a root.
+/// Front f eliminates pivots[pivot_begin[f]] .. and updates rows[row_begin[f]] .. (vertices eliminated later
+/// that are joined to a pivot, fill included). parent[f] is the front of the first eliminated row, -1 for a
+/// root.
 struct FrontStructure {
   std::vector<Index> pivot_begin{0};
   std::vector<Index> pivots;

@@ -75,10 +75,18 @@ class Inverter {
     const Index* end = plan_.targets.data() + (step.target_begin + step.targets);
     for (Index p = step.first + step.columns; p-- > step.first;) {
       switch (plan_.diagonal_slot(p) - plan_.column_begin[at(p)]) {
-        case 0: invert_column<0>(p, end); break;
-        case 1: invert_column<1>(p, end); break;
-        case 2: invert_column<2>(p, end); break;
-        default: invert_column<3>(p, end); break;
+        case 0:
+          invert_column<0>(p, end);
+          break;
+        case 1:
+          invert_column<1>(p, end);
+          break;
+        case 2:
+          invert_column<2>(p, end);
+          break;
+        default:
+          invert_column<3>(p, end);
+          break;
       }
     }
   }
@@ -260,7 +268,7 @@ void invert_on_pattern(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
   run_tasks(plan.tasks, threads, [&](int task, int worker) { workers[at(worker)]->run(task); });
 }
 
-#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                   \
+#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                        \
   template void invert_on_pattern<Scalar, Lanes>(const LaneFactors<Scalar, padded_width(Lanes)>&, \
                                                  InverseOnPattern<Scalar, Lanes>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)

@@ -18,7 +18,8 @@ struct InverseOnPattern {
 ///   Z_jS = -Z_SS L_Sj,   Z_jj = 1 / d_j - L_Sj^T Z_Sj.
 /// Z_SS is known when column j is reached because the rows of S are joined pairwise in L.
 ///
-/// Source: Takahashi, Fagan, Chen, "Formation of a sparse bus impedance matrix and its application to short circuit
+/// Source: Takahashi, Fagan, Chen, "Formation of a sparse bus impedance matrix and its application to short
+/// circuit
 ///         study", PICA 1973; Erisman, Tinney, Comm. ACM 18 (1975) 177-179; both from memory.
 template <typename Scalar, int Lanes>
 void invert_on_pattern(const LaneFactors<Scalar, padded_width(Lanes)>& factors,

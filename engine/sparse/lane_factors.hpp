@@ -34,9 +34,9 @@ template <int Width>
 
 /// The worst pivots of a task in each lane.
 ///
-/// The mark of a pivot d is max(|a|^2, |v|^2) / |d|^2 with a the diagonal entry it started from and v its largest
-/// off-diagonal entry: the square of what elimination magnifies rounding by. About 1 for diagonally dominant rows,
-/// infinite for a zero pivot.
+/// The mark of a pivot d is max(|a|^2, |v|^2) / |d|^2 with a the diagonal entry it started from and v its
+/// largest off-diagonal entry: the square of what elimination magnifies rounding by. About 1 for diagonally
+/// dominant rows, infinite for a zero pivot.
 template <int Lanes>
 struct PivotWatch {
   static constexpr int kKept = 3;
@@ -70,7 +70,8 @@ struct LaneFactors {
       : plan(std::move(shared_plan)),
         layout(lay_out_fronts<Width>(*plan)),
         slots(std::make_unique_for_overwrite<Pack<Scalar, Width>[]>(plan->all_slots())),
-        diagonal_squared(std::make_unique_for_overwrite<Doubles<Width>[]>(static_cast<std::size_t>(plan->order))),
+        diagonal_squared(
+            std::make_unique_for_overwrite<Doubles<Width>[]>(static_cast<std::size_t>(plan->order))),
         watches(static_cast<std::size_t>(plan->tasks) + 1) {}
 };
 

@@ -10,8 +10,8 @@ namespace kiloamp::sparse {
 /// Two doubles in one register; the vector extension of GCC and Clang.
 using TwoDoubles = double __attribute__((vector_size(16)));
 
-/// Four doubles as two pairs. Not a 32-byte vector: where the machine has none, GCC 12 keeps such a vector in memory, which
-/// measured five times slower in the column solver.
+/// Four doubles as two pairs. Not a 32-byte vector: where the machine has none, GCC 12 keeps such a vector in
+/// memory, which measured five times slower in the column solver.
 struct FourDoubles {
   TwoDoubles low;
   TwoDoubles high;
@@ -30,7 +30,9 @@ struct FourDoubles {
   friend FourDoubles operator+(FourDoubles a, const FourDoubles& b) { return a += b; }
   friend FourDoubles operator-(FourDoubles a, const FourDoubles& b) { return a -= b; }
   friend FourDoubles operator-(const FourDoubles& a) { return {-a.low, -a.high}; }
-  friend FourDoubles operator*(const FourDoubles& a, const FourDoubles& b) { return {a.low * b.low, a.high * b.high}; }
+  friend FourDoubles operator*(const FourDoubles& a, const FourDoubles& b) {
+    return {a.low * b.low, a.high * b.high};
+  }
   friend FourDoubles operator*(double a, const FourDoubles& b) { return {a * b.low, a * b.high}; }
   friend FourDoubles operator/(double a, const FourDoubles& b) { return {a / b.low, a / b.high}; }
   friend FourDoubles operator+(const FourDoubles& a, double b) { return {a.low + b, a.high + b}; }
@@ -163,7 +165,8 @@ inline void add_product(Pack<std::complex<double>, Width>& a, const Pack<std::co
 
 /// a -= b c
 template <int Width>
-inline void subtract_product(Pack<double, Width>& a, const Pack<double, Width>& b, const Pack<double, Width>& c) {
+inline void subtract_product(Pack<double, Width>& a, const Pack<double, Width>& b,
+                             const Pack<double, Width>& c) {
   a.re -= b.re * c.re;
 }
 template <int Width>
@@ -226,10 +229,13 @@ inline Doubles<padded_width(Lanes)> gather_lanes(const Entry& from, const Part& 
 
 /// Between the caller's entries (one Scalar per lane) and packs. Padding lanes get the real number `padding`.
 template <typename Scalar, int Lanes>
-inline void to_pack(Pack<Scalar, padded_width(Lanes)>& to, const std::array<Scalar, Lanes>& from, double padding) {
-  to.re = gather_lanes<Lanes>(from, [](const Scalar& value) { return std::real(value); }, padding);
+inline void to_pack(Pack<Scalar, padded_width(Lanes)>& to, const std::array<Scalar, Lanes>& from,
+                    double padding) {
+  to.re = gather_lanes<Lanes>(
+      from, [](const Scalar& value) { return std::real(value); }, padding);
   if constexpr (kIsComplex<Scalar>) {
-    to.im = gather_lanes<Lanes>(from, [](const Scalar& value) { return std::imag(value); }, 0);
+    to.im = gather_lanes<Lanes>(
+        from, [](const Scalar& value) { return std::imag(value); }, 0);
   }
 }
 
@@ -244,7 +250,8 @@ inline Scalar lane_of(const Pack<Scalar, Width>& from, int lane) {
 
 template <typename Scalar, int Lanes>
 inline void from_pack(std::array<Scalar, Lanes>& to, const Pack<Scalar, padded_width(Lanes)>& from) {
-  for (int s = 0; s < Lanes; ++s) to[static_cast<std::size_t>(s)] = lane_of<Scalar, padded_width(Lanes)>(from, s);
+  for (int s = 0; s < Lanes; ++s)
+    to[static_cast<std::size_t>(s)] = lane_of<Scalar, padded_width(Lanes)>(from, s);
 }
 
 }  // namespace kiloamp::sparse

@@ -10,7 +10,8 @@
 
 namespace kiloamp::sparse {
 
-/// A copy of one lane's matrix, with its own way of solving: refinement of the plain solution, or a pivoting LU.
+/// A copy of one lane's matrix, with its own way of solving: refinement of the plain solution, or a pivoting
+/// LU.
 template <typename Scalar>
 class LaneRemedy {
  public:
@@ -22,7 +23,8 @@ class LaneRemedy {
   LaneRemedy(const LaneRemedy&) = delete;
   LaneRemedy& operator=(const LaneRemedy&) = delete;
 
-  /// Factorises by Eigen::SparseLU (column pivoting by degree, row pivoting by size). False: a column without a pivot.
+  /// Factorises by Eigen::SparseLU (column pivoting by degree, row pivoting by size). False: a column without
+  /// a pivot.
   [[nodiscard]] bool pivot();
   [[nodiscard]] bool pivoting() const { return lu_ != nullptr; }
 

@@ -14,7 +14,8 @@ std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 
 template <typename Scalar, int Lanes>
 LowRankChange<Scalar, Lanes>::LowRankChange(const Factorisation<Scalar, Lanes>& factorisation,
-                                            std::span<const SparseVector<Scalar, Lanes>> u, std::span<const Entry> d)
+                                            std::span<const SparseVector<Scalar, Lanes>> u,
+                                            std::span<const Entry> d)
     : order_(at(factorisation.analysis().order())),
       rank_(static_cast<int>(u.size())),
       w_(u.size() * order_),
@@ -69,14 +70,15 @@ void LowRankChange<Scalar, Lanes>::find_gain(int lane, std::span<const SparseVec
 }
 
 template <typename Scalar, int Lanes>
-typename LowRankChange<Scalar, Lanes>::Entry LowRankChange<Scalar, Lanes>::changed_entry(Index i, Index j,
-                                                                                          const Entry& before) const {
+typename LowRankChange<Scalar, Lanes>::Entry LowRankChange<Scalar, Lanes>::changed_entry(
+    Index i, Index j, const Entry& before) const {
   Entry after = before;
   for (int a = 0; a < rank_; ++a) {
     const Entry& left = w_[at(a) * order_ + at(i)];
     for (int b = 0; b < rank_; ++b) {
       const Entry& right = w_[at(b) * order_ + at(j)];
-      for (std::size_t s = 0; s < at(Lanes); ++s) after[s] -= left[s] * gain_[at(a * rank_ + b)][s] * right[s];
+      for (std::size_t s = 0; s < at(Lanes); ++s)
+        after[s] -= left[s] * gain_[at(a * rank_ + b)][s] * right[s];
     }
   }
   return after;
@@ -92,7 +94,8 @@ void LowRankChange<Scalar, Lanes>::change_diagonal(std::span<Entry> diagonal) co
 }
 
 template <typename Scalar, int Lanes>
-void LowRankChange<Scalar, Lanes>::change(std::span<const Edge> edges, InverseOnPattern<Scalar, Lanes>& inverse) const {
+void LowRankChange<Scalar, Lanes>::change(std::span<const Edge> edges,
+                                          InverseOnPattern<Scalar, Lanes>& inverse) const {
   change_diagonal(inverse.diagonal);
   for (std::size_t e = 0; e < edges.size(); ++e) {
     inverse.off_diagonal[e] = changed_entry(edges[e].i, edges[e].j, inverse.off_diagonal[e]);
@@ -100,7 +103,8 @@ void LowRankChange<Scalar, Lanes>::change(std::span<const Edge> edges, InverseOn
 }
 
 template <typename Scalar, int Lanes>
-std::span<const typename LowRankChange<Scalar, Lanes>::Entry> LowRankChange<Scalar, Lanes>::response(int b) const {
+std::span<const typename LowRankChange<Scalar, Lanes>::Entry> LowRankChange<Scalar, Lanes>::response(
+    int b) const {
   return std::span<const Entry>(w_).subspan(at(b) * order_, order_);
 }
 

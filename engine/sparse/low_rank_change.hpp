@@ -9,15 +9,16 @@
 
 namespace kiloamp::sparse {
 
-/// The change cannot be told from one that makes the matrix singular once |I + D U^T Z U| falls below this many
-/// roundings of its terms; the result would have lost all but about four digits.
+/// The change cannot be told from one that makes the matrix singular once |I + D U^T Z U| falls below this
+/// many roundings of its terms; the result would have lost all but about four digits.
 inline constexpr double kSplitMargin = 1e4;
 
-/// Outcome of a change in one lane. A value, not an error: taking out the only tie of an island is a true result.
+/// Outcome of a change in one lane. A value, not an error: taking out the only tie of an island is a true
+/// result.
 enum class ChangeOutcome {
   kSolved,
-  /// A' is singular to working precision: the change cuts rows off, or a nearly ideal branch hides the difference.
-  /// The caller removes the rows cut off and factorises again.
+  /// A' is singular to working precision: the change cuts rows off, or a nearly ideal branch hides the
+  /// difference. The caller removes the rows cut off and factorises again.
   kSplits,
 };
 
@@ -29,9 +30,9 @@ using SparseVector = std::vector<Term<Scalar, Lanes>>;
 ///
 ///   Z' = Z - W G W^T,   W = Z U (k columns of solutions),   G = (I + D U^T Z U)^-1 D.
 ///
-/// Removing a branch of admittance y between rows i and j: u = e_i - e_j, d = -y. A branch that ends at one row only in
-/// some lane has a zero term for the other row there. A lane without any change has d = 0. D need not be regular.
-/// Memory: k columns. The factorisation is needed during construction only.
+/// Removing a branch of admittance y between rows i and j: u = e_i - e_j, d = -y. A branch that ends at one
+/// row only in some lane has a zero term for the other row there. A lane without any change has d = 0. D need
+/// not be regular. Memory: k columns. The factorisation is needed during construction only.
 ///
 /// Source: Sherman, Morrison, Ann. Math. Stat. 21 (1950) 124-127; Woodbury 1950; from memory.
 template <typename Scalar, int Lanes>
@@ -40,8 +41,8 @@ class LowRankChange {
   using Entry = std::array<Scalar, Lanes>;
 
   /// @param d  k x k entries, row by row; symmetric
-  LowRankChange(const Factorisation<Scalar, Lanes>& factorisation, std::span<const SparseVector<Scalar, Lanes>> u,
-                std::span<const Entry> d);
+  LowRankChange(const Factorisation<Scalar, Lanes>& factorisation,
+                std::span<const SparseVector<Scalar, Lanes>> u, std::span<const Entry> d);
 
   [[nodiscard]] int rank() const { return rank_; }
   [[nodiscard]] const std::array<ChangeOutcome, Lanes>& outcome() const { return outcome_; }

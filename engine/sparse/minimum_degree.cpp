@@ -52,7 +52,8 @@ class QuotientGraph {
     for (Index v = 0; v < order; ++v) {
       Index root = v;
       while (front_[at(root)] < 0) root = merged_into_[at(root)];
-      for (Index step = v; front_[at(step)] < 0; step = merged_into_[at(step)]) front_[at(step)] = front_[at(root)];
+      for (Index step = v; front_[at(step)] < 0; step = merged_into_[at(step)])
+        front_[at(step)] = front_[at(root)];
       result.front_of[at(v)] = front_[at(root)];
     }
     result.fronts = fronts_;

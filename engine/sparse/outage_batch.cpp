@@ -41,7 +41,8 @@ RankOneResponse<Scalar, Lanes> response_to(std::size_t number, const RankOneChan
 template <typename Scalar, int Lanes>
 void each_rank_one_change(const Factorisation<Scalar, Lanes>& factorisation,
                           std::span<const RankOneChange<Scalar, Lanes>> changes,
-                          const std::function<void(const RankOneResponse<Scalar, Lanes>&)>& visit, int threads) {
+                          const std::function<void(const RankOneResponse<Scalar, Lanes>&)>& visit,
+                          int threads) {
   using Entry = std::array<Scalar, Lanes>;
   struct Worker {
     typename Factorisation<Scalar, Lanes>::SparseSolver solver;
@@ -58,7 +59,8 @@ void each_rank_one_change(const Factorisation<Scalar, Lanes>& factorisation,
     const std::size_t count = std::min(kBlock, changes.size() - from);
     worker->solver.clear();
     for (std::size_t b = 0; b < count; ++b) {
-      for (const auto& term : changes[from + b].u) worker->solver.put(static_cast<int>(b), term.row, term.value);
+      for (const auto& term : changes[from + b].u)
+        worker->solver.put(static_cast<int>(b), term.row, term.value);
     }
     worker->solver.solve();
     worker->solver.copy_all(worker->z);
@@ -69,9 +71,9 @@ void each_rank_one_change(const Factorisation<Scalar, Lanes>& factorisation,
   });
 }
 
-#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                        \
-  template void each_rank_one_change<Scalar, Lanes>(                                              \
-      const Factorisation<Scalar, Lanes>&, std::span<const RankOneChange<Scalar, Lanes>>,         \
+#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                \
+  template void each_rank_one_change<Scalar, Lanes>(                                      \
+      const Factorisation<Scalar, Lanes>&, std::span<const RankOneChange<Scalar, Lanes>>, \
       const std::function<void(const RankOneResponse<Scalar, Lanes>&)>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)

@@ -38,15 +38,16 @@ struct RankOneResponse {
   }
 };
 
-/// Visits every change once with its response. Columns are solved four at a time in all lanes, so one outage costs
-/// a quarter of a pass over L; memory is eight columns per thread however many changes there are.
+/// Visits every change once with its response. Columns are solved four at a time in all lanes, so one outage
+/// costs a quarter of a pass over L; memory is eight columns per thread however many changes there are.
 ///
-/// With threads > 1 the visitor runs on several threads at once, for different changes, in no fixed order: it must keep
-/// what it writes apart by `response.change`. The numbers themselves do not depend on the number of threads.
-/// Exceptions of the visitor end the batch and reach the caller.
+/// With threads > 1 the visitor runs on several threads at once, for different changes, in no fixed order: it
+/// must keep what it writes apart by `response.change`. The numbers themselves do not depend on the number of
+/// threads. Exceptions of the visitor end the batch and reach the caller.
 template <typename Scalar, int Lanes>
 void each_rank_one_change(const Factorisation<Scalar, Lanes>& factorisation,
                           std::span<const RankOneChange<Scalar, Lanes>> changes,
-                          const std::function<void(const RankOneResponse<Scalar, Lanes>&)>& visit, int threads = 1);
+                          const std::function<void(const RankOneResponse<Scalar, Lanes>&)>& visit,
+                          int threads = 1);
 
 }  // namespace kiloamp::sparse

@@ -53,7 +53,8 @@ class Prober {
     solver_.solve();
     std::fill(sums_.begin(), sums_.end(), Row{});
     for (std::size_t c = 0; c < rows.size(); ++c) {
-      for (auto& sum : sums_[at(plan_.position_of[at(rows[c])])]) set_lane<kBlock>(sum.re, static_cast<int>(c), -1);
+      for (auto& sum : sums_[at(plan_.position_of[at(rows[c])])])
+        set_lane<kBlock>(sum.re, static_cast<int>(c), -1);
       const Entry z = solver_.get(static_cast<int>(c), rows[c]);
       for (std::size_t s = 0; s < at(Lanes); ++s) {
         results[s].include({0, 0, or_infinite(parts(z[s] * values_.diagonal[at(rows[c])][s]))});
@@ -124,12 +125,14 @@ void ProbeResult::include(const ProbeResult& other) {
 
 template <typename Scalar, int Lanes>
 std::array<ProbeResult, Lanes> probe_columns(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
-                                             const Values<Scalar, Lanes>& values, std::span<const Index> rows) {
+                                             const Values<Scalar, Lanes>& values,
+                                             std::span<const Index> rows) {
   std::array<ProbeResult, Lanes> results{};
   Prober<Scalar, Lanes> prober(factors, values);
   for (std::size_t from = 0; from < rows.size(); from += kBlock) {
     prober.probe(rows.subspan(from, std::min<std::size_t>(kBlock, rows.size() - from)), results);
-    const bool doubtful = std::ranges::any_of(results, [](const auto& one) { return !(one.residual <= kCleanResidual); });
+    const bool doubtful =
+        std::ranges::any_of(results, [](const auto& one) { return !(one.residual <= kCleanResidual); });
     if (doubtful) prober.measure_rounding(results);
   }
   return results;
@@ -150,7 +153,8 @@ std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int 
       }
     }
   }
-  std::stable_sort(suspects.begin(), suspects.end(), [](const auto& a, const auto& b) { return a.mark > b.mark; });
+  std::stable_sort(suspects.begin(), suspects.end(),
+                   [](const auto& a, const auto& b) { return a.mark > b.mark; });
   const EliminationPlan& plan = *factors.plan;
   std::vector<Index> rows;
   const auto add = [&](Index position) {
@@ -175,9 +179,10 @@ Index worst_row(const LaneFactors<Scalar, Width>& factors, int lane) {
   return worst.step < 0 ? 0 : factors.plan->row_of[at(worst_pivot(factors, worst.step, lane))];
 }
 
-#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                                      \
-  template std::array<ProbeResult, Lanes> probe_columns<Scalar, Lanes>(                                         \
-      const LaneFactors<Scalar, padded_width(Lanes)>&, const Values<Scalar, Lanes>&, std::span<const Index>);
+#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                           \
+  template std::array<ProbeResult, Lanes> probe_columns<Scalar, Lanes>(              \
+      const LaneFactors<Scalar, padded_width(Lanes)>&, const Values<Scalar, Lanes>&, \
+      std::span<const Index>);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)
 KILOAMP_INSTANTIATE(std::complex<double>, 4)
@@ -185,7 +190,7 @@ KILOAMP_INSTANTIATE(double, 1)
 KILOAMP_INSTANTIATE(double, 2)
 KILOAMP_INSTANTIATE(double, 4)
 #undef KILOAMP_INSTANTIATE
-#define KILOAMP_INSTANTIATE(Scalar, Width)                                                            \
+#define KILOAMP_INSTANTIATE(Scalar, Width)                                                                  \
   template std::vector<Index> rows_to_probe<Scalar, Width>(const LaneFactors<Scalar, Width>&, int, double); \
   template Index worst_row<Scalar, Width>(const LaneFactors<Scalar, Width>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)

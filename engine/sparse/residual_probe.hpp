@@ -19,13 +19,14 @@ struct ProbeResult {
 
 /// Solves for the columns `rows` two by two and measures each lane.
 template <typename Scalar, int Lanes>
-[[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
-                                                           const Values<Scalar, Lanes>& values,
-                                                           std::span<const Index> rows);
+[[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(
+    const LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
+    std::span<const Index> rows);
 
 /// Rows to probe: those of suspect pivots in any lane (mark above `suspect`^2) and two ordinary ones.
 template <typename Scalar, int Width>
-[[nodiscard]] std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes, double suspect);
+[[nodiscard]] std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes,
+                                               double suspect);
 
 /// The row of the worst pivot of a lane.
 template <typename Scalar, int Width>

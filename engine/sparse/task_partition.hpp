@@ -19,8 +19,8 @@ void number_in_postorder(std::vector<Block>& blocks);
 
 /// task_of[block]: 0 .. tasks - 1 for blocks in tasks, -1 for the top that is done serially afterwards.
 ///
-/// A task is a run of whole subtrees holding about kTaskShare of the work. Patterns below kSerialWork get no task.
-/// Depends on the blocks alone, never on the machine.
+/// A task is a run of whole subtrees holding about kTaskShare of the work. Patterns below kSerialWork get no
+/// task. Depends on the blocks alone, never on the machine.
 [[nodiscard]] std::vector<Index> partition_tasks(const std::vector<Block>& blocks, Index& tasks);
 
 }  // namespace kiloamp::sparse

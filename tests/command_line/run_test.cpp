@@ -107,7 +107,7 @@ BOOST_AUTO_TEST_CASE(text_of_a_hand_worked_case_byte_for_byte) {
   const std::string table = o.out.substr(o.out.find("\n\n") + 2);
   BOOST_TEST(table.substr(0, table.find("\n\n")) ==
              "bus  nominal  fault  current  X/R   peak  earth   R1     X1   R0     X0\n"
-             "          kV              kA          kA     kA    ohm    ohm  ohm    ohm\n"
+             "          kV              kA          kA     kA  ohm    ohm  ohm    ohm\n"
              "B      10.00  3ph      5.774    -  16.33  0.0    0.0  1.000  0.0  2.000\n"
              "              LG       4.330    -  12.25  4.330  0.0  1.000  0.0  2.000\n"
              "              LL       5.000    -  14.14  0.0    0.0  1.000  0.0  2.000\n"

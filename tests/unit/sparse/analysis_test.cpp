@@ -40,7 +40,8 @@ void check_plan(const Graph& graph) {
   }
   const auto expected = fill_by_definition(graph, plan.position_of);
   for (Index p = 0; p < graph.order; ++p) {
-    std::vector<Index> rows(plan.rows.begin() + plan.column_begin[at(p)], plan.rows.begin() + plan.diagonal_slot(p));
+    std::vector<Index> rows(plan.rows.begin() + plan.column_begin[at(p)],
+                            plan.rows.begin() + plan.diagonal_slot(p));
     BOOST_REQUIRE(std::is_sorted(rows.rbegin(), rows.rend()));
     const std::set<Index> found(rows.begin(), rows.end());
     BOOST_REQUIRE(found.size() == rows.size());
@@ -122,8 +123,8 @@ BOOST_AUTO_TEST_CASE(chains_of_a_million_rows_stay_shallow) {
   BOOST_TEST(line.factor_entries() == 1'999'999u);
   edges.push_back({999'999, 0});
   const Analysis ring(1'000'000, edges);
-  // Each round takes at least every third row of a ring, so the tree has at most log(n) / log(1.5) = 34 rounds, and a
-  // column spans at most two of them.
+  // Each round takes at least every third row of a ring, so the tree has at most log(n) / log(1.5) = 34
+  // rounds, and a column spans at most two of them.
   BOOST_TEST(ring.tree_height() <= 68);
   BOOST_TEST(ring.factor_entries() <= 3'000'000u);
 }

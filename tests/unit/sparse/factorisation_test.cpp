@@ -36,7 +36,8 @@ void check_all_entries(const Graph& graph, std::mt19937& random) {
     for (Index v = 0; v < graph.order; ++v) {
       diagonal = diagonal && test::close<Scalar>(selected.diagonal[at(v)][s], z(v, v), tolerance);
       for (Index u = 0; u < graph.order; ++u) {
-        everywhere = everywhere && test::close<Scalar>(columns[at(v) * at(graph.order) + at(u)][s], z(u, v), tolerance);
+        everywhere = everywhere &&
+                     test::close<Scalar>(columns[at(v) * at(graph.order) + at(u)][s], z(u, v), tolerance);
       }
     }
     for (std::size_t e = 0; e < graph.edges.size(); ++e) {
@@ -148,7 +149,8 @@ BOOST_AUTO_TEST_CASE(threads_do_not_change_a_bit) {
 }
 
 BOOST_AUTO_TEST_CASE(a_million_rows_in_a_chain_solve) {
-  // Tridiagonal -1, 2.5, -1 far from its ends: Z_ij = exp(-t |i - j|) / (2 sinh t) with 2 cosh t = 2.5, so t = ln 2.
+  // Tridiagonal -1, 2.5, -1 far from its ends: Z_ij = exp(-t |i - j|) / (2 sinh t) with 2 cosh t = 2.5, so t
+  // = ln 2.
   constexpr Index kOrder = 1'000'000;
   std::vector<Edge> edges;
   Values<double, 1> values;

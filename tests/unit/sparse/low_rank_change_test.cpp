@@ -54,7 +54,8 @@ Dense<Scalar> changed_inverse(const Graph& graph, const Values<Scalar, Lanes>& v
   Dense<Scalar> d(rank, rank);
   for (Eigen::Index a = 0; a < rank; ++a) {
     for (const auto& term : change.u[static_cast<std::size_t>(a)]) u(term.row, a) += term.value[at(lane)];
-    for (Eigen::Index b = 0; b < rank; ++b) d(a, b) = change.d[static_cast<std::size_t>(a * rank + b)][at(lane)];
+    for (Eigen::Index b = 0; b < rank; ++b)
+      d(a, b) = change.d[static_cast<std::size_t>(a * rank + b)][at(lane)];
   }
   return (test::dense_matrix(graph, values, lane) + u * d * u.transpose()).fullPivLu().inverse();
 }
@@ -113,7 +114,8 @@ struct TailedRing {
     values.diagonal.resize(6);
     for (std::size_t e = 0; e < graph.edges.size(); ++e) {
       const auto k = static_cast<double>(e);
-      y.push_back({1.0 / Complex(0.01, 0.1 + 0.02 * k), 1.0 / Complex(0.02, 0.11 + 0.02 * k), 1.0 / Complex(0.03, 0.3)});
+      y.push_back({1.0 / Complex(0.01, 0.1 + 0.02 * k), 1.0 / Complex(0.02, 0.11 + 0.02 * k),
+                   1.0 / Complex(0.03, 0.3)});
       auto& entry = values.off_diagonal.emplace_back();
       for (std::size_t s = 0; s < 3; ++s) {
         entry[s] = -y[e][s];
@@ -186,7 +188,8 @@ BOOST_AUTO_TEST_CASE(batches_do_not_depend_on_threads_and_agree_with_refactorisi
   const auto before = factorisation.selected_inverse();
   std::vector<RankOneChange<Complex, 3>> changes;
   for (std::size_t e = 0; e < graph.edges.size(); e += 40) {
-    changes.push_back({{{graph.edges[e].i, {1, 1, 1}}, {graph.edges[e].j, {-1, -1, 0}}}, values.off_diagonal[e]});
+    changes.push_back(
+        {{{graph.edges[e].i, {1, 1, 1}}, {graph.edges[e].j, {-1, -1, 0}}}, values.off_diagonal[e]});
   }
   std::vector<std::vector<std::array<Complex, 3>>> found[2];
   for (const int threads : {1, 3}) {

@@ -48,7 +48,8 @@ inline std::set<std::pair<Index, Index>> random_pairs(Index order, int count, st
   return pairs;
 }
 
-/// Chain, star, clique, grid, wheel, two hubs with parallel paths, islands, random graphs of several densities.
+/// Chain, star, clique, grid, wheel, two hubs with parallel paths, islands, random graphs of several
+/// densities.
 inline std::vector<Graph> unfriendly_graphs(std::mt19937& random) {
   using Pairs = std::set<std::pair<Index, Index>>;
   std::vector<Graph> graphs;
@@ -64,7 +65,8 @@ inline std::vector<Graph> unfriendly_graphs(std::mt19937& random) {
     if (v % 11 != 10) grid.insert({v, v + 1});
     if (v < 110) grid.insert({v, v + 11});
   }
-  for (Index v = 1; v < 80; ++v) wheel.insert({0, v}), wheel.insert({std::min(v, v % 79 + 1), std::max(v, v % 79 + 1)});
+  for (Index v = 1; v < 80; ++v)
+    wheel.insert({0, v}), wheel.insert({std::min(v, v % 79 + 1), std::max(v, v % 79 + 1)});
   for (Index v = 2; v < 130; ++v) bundle.insert({0, v}), bundle.insert({1, v});
   for (Index k = 0; k < 8; ++k) {
     for (Index v = 0; v < 7; ++v) {

@@ -103,7 +103,8 @@ BOOST_AUTO_TEST_CASE(series_capacitors_and_negative_star_arms_stay_accurate) {
     for (std::size_t e = 0; e < graph.edges.size(); ++e) {
       const double x = reactance(random);
       // Every fourth branch is capacitive; some of them cancel a neighbour exactly (x and -x in series).
-      admittance.push_back(1.0 / Complex(0.0, random() % 4 == 0 ? (random() % 2 == 0 ? -0.25 : -x) : (random() % 3 == 0 ? 0.25 : x)));
+      admittance.push_back(1.0 / Complex(0.0, random() % 4 == 0 ? (random() % 2 == 0 ? -0.25 : -x)
+                                                                : (random() % 3 == 0 ? 0.25 : x)));
     }
     const auto values = network_values(graph, admittance, Complex(0, -10));
     const Dense<Complex> a = test::dense_matrix(graph, values, 0);
@@ -160,7 +161,8 @@ void check_singular(const Graph& graph, const Matrix& values, const std::set<Ind
   constexpr int kLanes = static_cast<int>(std::tuple_size_v<typename decltype(values.diagonal)::value_type>);
   try {
     const Factorisation<Scalar, kLanes> factorisation(test::analyse(graph), values);
-    BOOST_ERROR("no NumericalError for " << graph.name << ", residual " << factorisation.accuracy()[at(lane)].residual);
+    BOOST_ERROR("no NumericalError for " << graph.name << ", residual "
+                                         << factorisation.accuracy()[at(lane)].residual);
   } catch (const NumericalError& error) {
     BOOST_TEST(error.lane() == lane);
     BOOST_TEST(rows.count(error.row()) == 1u, "row " << error.row() << " of " << graph.name);
@@ -174,13 +176,15 @@ BOOST_AUTO_TEST_CASE(an_island_without_earth_throws_and_names_one_of_its_rows) {
     // Two islands of 20 and 15 rows; only the first is earthed.
     std::set<std::pair<Index, Index>> pairs;
     for (Index v = 1; v < 20; ++v) pairs.insert({static_cast<Index>(random() % static_cast<unsigned>(v)), v});
-    for (Index v = 21; v < 35; ++v) pairs.insert({20 + static_cast<Index>(random() % static_cast<unsigned>(v - 20)), v});
+    for (Index v = 21; v < 35; ++v)
+      pairs.insert({20 + static_cast<Index>(random() % static_cast<unsigned>(v - 20)), v});
     Graph graph{"two islands", 35, {}};
     for (const auto& [a, b] : pairs) graph.edges.push_back({a, b});
     graph.edges.push_back({2, 19});
     graph.edges.push_back({22, 34});
     std::set<std::pair<Index, Index>> unique;
-    std::erase_if(graph.edges, [&](const Edge& edge) { return !unique.insert(std::minmax(edge.i, edge.j)).second; });
+    std::erase_if(graph.edges,
+                  [&](const Edge& edge) { return !unique.insert(std::minmax(edge.i, edge.j)).second; });
     std::vector<Complex> admittance;
     std::uniform_real_distribution<double> part(0.1, 3);
     for (std::size_t e = 0; e < graph.edges.size(); ++e) {
@@ -197,16 +201,20 @@ BOOST_AUTO_TEST_CASE(an_island_without_earth_throws_and_names_one_of_its_rows) {
 BOOST_AUTO_TEST_CASE(small_singular_matrices_throw) {
   check_singular(Graph{"zero", 1, {}}, Values<double, 1>{{{0.0}}, {}}, {0}, 0);
   check_singular(Graph{"branch", 2, {{0, 1}}}, Values<double, 1>{{{1.0}, {1.0}}, {{-1.0}}}, {0, 1}, 0);
-  check_singular(Graph{"lane 1", 2, {{0, 1}}}, Values<double, 2>{{{2.0, 0.3}, {2.0, 0.3}}, {{-1.0, -0.3}}}, {0, 1}, 1);
+  check_singular(Graph{"lane 1", 2, {{0, 1}}}, Values<double, 2>{{{2.0, 0.3}, {2.0, 0.3}}, {{-1.0, -0.3}}},
+                 {0, 1}, 1);
   check_singular(Graph{"zero row", 3, {{0, 1}, {1, 2}}},
-                 Values<Complex, 1>{{{Complex(1)}, {Complex(2)}, {Complex(0)}}, {{Complex(1)}, {Complex(0)}}}, {2}, 0);
+                 Values<Complex, 1>{{{Complex(1)}, {Complex(2)}, {Complex(0)}}, {{Complex(1)}, {Complex(0)}}},
+                 {2}, 0);
 }
 
 BOOST_AUTO_TEST_CASE(not_a_number_throws) {
   const double nan = std::numeric_limits<double>::quiet_NaN();
   const Graph graph{"pair and single", 3, {{0, 1}}};
-  BOOST_CHECK_THROW((Factorisation<double, 1>(test::analyse(graph), {{{1.0}, {1.0}, {nan}}, {{0.5}}})), NumericalError);
-  BOOST_CHECK_THROW((Factorisation<double, 1>(test::analyse(graph), {{{1.0}, {1.0}, {1.0}}, {{nan}}})), NumericalError);
+  BOOST_CHECK_THROW((Factorisation<double, 1>(test::analyse(graph), {{{1.0}, {1.0}, {nan}}, {{0.5}}})),
+                    NumericalError);
+  BOOST_CHECK_THROW((Factorisation<double, 1>(test::analyse(graph), {{{1.0}, {1.0}, {1.0}}, {{nan}}})),
+                    NumericalError);
 }
 
 BOOST_AUTO_TEST_CASE(a_large_impedance_to_earth_needs_no_remedy) {
