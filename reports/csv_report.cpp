@@ -9,7 +9,8 @@ namespace {
 constexpr std::size_t kFlushAt = 1 << 16;
 constexpr int kAmount = 6, kAngle = 3;
 
-// RFC 4180: quotes around a field with a comma, quote or line break; a quote is doubled.
+}  // namespace
+
 std::string csv_field(const std::string& text) {
   if (text.find_first_of(",\"\r\n") == std::string::npos) return text;
   std::string out = "\"";
@@ -19,6 +20,8 @@ std::string csv_field(const std::string& text) {
   }
   return out + '"';
 }
+
+namespace {
 
 class CsvReport : public FaultReport {
  public:

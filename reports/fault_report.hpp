@@ -35,6 +35,9 @@ class FaultReport {
 [[nodiscard]] std::unique_ptr<FaultReport> text_report(const Study& study, const ReportFacts& facts,
                                                        Sink sink);
 
+/// RFC 4180: quotes around a field with a comma, quote or line break; a quote is doubled.
+[[nodiscard]] std::string csv_field(const std::string& text);
+
 /// RFC 4180, one header row whose names end in their unit. Currents and impedances with 6 decimals, angles
 /// with 3.
 enum class CsvTable { faults, contributions };

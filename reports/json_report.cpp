@@ -1,6 +1,5 @@
-#include <nlohmann/json.hpp>
-
 #include "reports/fault_report.hpp"
+#include "reports/json_parts.hpp"
 #include "reports/number_text.hpp"
 #include "reports/study_words.hpp"
 
@@ -10,47 +9,12 @@ namespace {
 
 constexpr std::size_t kFlushAt = 1 << 16;
 
-std::string json_text(const std::string& text) {
-  return nlohmann::json(text).dump(-1, ' ', false, nlohmann::json::error_handler_t::replace);
-}
-
 class JsonReport : public FaultReport {
  public:
   JsonReport(const Study& study, ReportFacts facts, Sink sink)
       : study_(study), facts_(std::move(facts)), sink_(std::move(sink)) {}
 
-  void begin() override {
-    const StudyOptions& o = study_.options();
-    out_ = "{\n\"format\": \"kiloamp-results\", \"version\": 1, \"study\": " + json_text(facts_.study) +
-           ", \"method\": \"classical\",\n\"case\": {\"title\": " +
-           (study_.network().title ? json_text(*study_.network().title) : "null") +
-           ", \"file\": " + json_text(facts_.file) + ", \"sha256\": " + json_text(facts_.sha256) +
-           "},\n\"scenario\": " + (study_.scenario_id().empty() ? "null" : json_text(study_.scenario_id())) +
-           ", \"case_kind\": \"" + (o.case_kind == CaseKind::max ? "max" : "min") + "\", \"frequency_hz\": ";
-    append_shortest(out_, study_.network().frequency_hz);
-    out_ += ", \"base_mva\": ";
-    append_shortest(out_, study_.network().base());
-    out_ +=
-        ",\n\"prefault\": " + json_text(prefault_words(study_)) + ",\n\"fault_impedance\": {\"phase_ohm\": ";
-    pair(o.phase_ohm);
-    out_ += ", \"earth_ohm\": ";
-    pair(o.earth_ohm);
-    out_ += "},\n\"peak\": " + json_text(kPeakFormula) + ",\n\"defaults_used\": [";
-    const char* gap = "\n";
-    for (const DefaultUse& use : study_.defaults_used()) {
-      out_ += gap + std::string(" {\"field\": ") + json_text(use.field) +
-              ", \"value\": " + json_text(use.value) + ", \"source\": " + json_text(use.source) +
-              ", \"elements\": [";
-      for (std::size_t i = 0; i < use.elements.size(); ++i) out_ += (i > 0 ? ", " : "") + id(use.elements[i]);
-      out_ += "]}";
-      gap = ",\n";
-    }
-    out_ += "],\n\"warnings\": ";
-    list(study_.warnings());
-    out_ += ",\n\"cautions\": ";
-    list(cautions());
-    out_ += ",\n\"faults\": [";
-  }
+  void begin() override { out_ = json_heading(study_, facts_) + "\"faults\": ["; }
 
   void fault(const FaultResult& r) override {
     out_ += first_ ? "\n" : ",\n";
@@ -109,11 +73,6 @@ class JsonReport : public FaultReport {
  private:
   std::string id(ElementRef ref) const { return json_text(element(study_.network(), ref).id); }
   std::string bus(BusIndex b) const { return json_text(study_.network().bus(b).id); }
-  void list(const std::vector<std::string>& texts) {
-    out_ += '[';
-    for (std::size_t i = 0; i < texts.size(); ++i) out_ += (i > 0 ? ",\n " : "\n ") + json_text(texts[i]);
-    out_ += ']';
-  }
   void optional(const std::optional<double>& value) {
     if (value)
       append_shortest(out_, *value);

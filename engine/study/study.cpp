@@ -1,6 +1,7 @@
 #include "engine/study/study.hpp"
 
 #include <algorithm>
+#include <chrono>
 
 namespace kiloamp {
 
@@ -98,6 +99,7 @@ void warn_of_model(const Network& n, const SequenceModel& model, const SolutionQ
 }  // namespace
 
 Study::Study(Network network, const StudyOptions& options) : network_(std::move(network)), options_(options) {
+  const auto start = std::chrono::steady_clock::now();
   if (options_.scenario) {
     apply_scenario(network_, *options_.scenario);
     scenario_id_ = network_.scenarios[*options_.scenario].id;
@@ -105,7 +107,11 @@ Study::Study(Network network, const StudyOptions& options) : network_(std::move(
   defaults_ = fill_defaults(network_);
   apply_case_kind(network_, options_.case_kind);
   model_ = build_sequence_model(network_, {options_.include_shunts, {}});
+  const auto modelled = std::chrono::steady_clock::now();
   solver_ = std::make_unique<FaultSolver>(model_, prefault_of(network_, options_.prefault), options_.threads);
+  using Milliseconds = std::chrono::duration<double, std::milli>;
+  timing_ = {Milliseconds(modelled - start).count(),
+             Milliseconds(std::chrono::steady_clock::now() - modelled).count()};
   warn_of_unused(network_, options_, warnings_);
   for (const DefaultUse& use : defaults_)
     if (use.field == "r0_ohm_per_km, x0_ohm_per_km")

@@ -49,6 +49,12 @@ class Study {
   /// data, buses without a source, loops of closed switches, a sequence whose equations needed a pivoting
   /// solution.
   [[nodiscard]] const std::vector<std::string>& warnings() const { return warnings_; }
+  /// Wall time of the two parts of construction.
+  struct Timing {
+    double model_ms = 0;     ///< state, defaults, sequence networks
+    double solution_ms = 0;  ///< assembly, ordering, factors, selected inverse
+  };
+  [[nodiscard]] const Timing& timing() const { return timing_; }
   [[nodiscard]] const std::string& scenario_id() const { return scenario_id_; }
 
   /// Solves every wanted fault, bus by bus in the case's order and kind by kind, and hands each to `visit`;
@@ -63,6 +69,7 @@ class Study {
   SequenceModel model_;
   std::unique_ptr<FaultSolver> solver_;
   std::vector<std::string> warnings_;
+  Timing timing_;
 };
 
 /// The cautions that every report prints, in order. Source: common practice; standards named where a caution

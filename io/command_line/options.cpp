@@ -19,7 +19,8 @@ constexpr const char* kOverview =
     "contributions.\n\n"
     "  kiloamp check CASE            read a case and judge its data\n"
     "  kiloamp sweep CASE            faults at every bus\n"
-    "  kiloamp fault CASE --bus ID   faults at one bus, with currents and voltages around it\n\n"
+    "  kiloamp fault CASE --bus ID   faults at one bus, with currents and voltages around it\n"
+    "  kiloamp outages CASE          largest and smallest current at every bus over all single outages\n\n"
     "kiloamp VERB --help explains a verb. CASE is a case file, or - for standard input.\n"
     "Exit codes: 0 the study ran; 1 it could not be computed, or a cross-check disagreed; 2 the input is "
     "wrong.";
@@ -100,20 +101,48 @@ CLI::Validator into(std::string (*read)(const std::string&, Target&), Target& ta
 }
 
 struct Texts {  // what the custom options were given as
-  std::string kinds, prefault, phase, earth, method, case_kind;
+  std::string kinds, prefault, phase, earth, method, case_kind, elements;
+  std::optional<int> depth;
 };
 
-void add_study_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
+// Words of --elements and the kinds they stand for.
+struct ElementWord {
+  std::string_view word;
+  std::vector<ElementKind> kinds;
+};
+const std::vector<ElementWord>& element_words() {
+  static const std::vector<ElementWord> words{
+      {"feeders", {ElementKind::network_feeder}},
+      {"machines", {ElementKind::synchronous_machine}},
+      {"motors", {ElementKind::induction_motor}},
+      {"lines", {ElementKind::line}},
+      {"transformers", {ElementKind::transformer, ElementKind::three_winding_transformer}},
+      {"reactors", {ElementKind::series_reactor}},
+      {"couplers", {ElementKind::bus_switch}},
+      {"earthing", {ElementKind::earthing_transformer}}};
+  return words;
+}
+
+std::string read_elements(const std::string& text, std::vector<ElementKind>& kinds) {
+  kinds.clear();
+  std::vector<std::string_view> known;
+  for (const auto& entry : element_words()) known.push_back(entry.word);
+  std::size_t start = 0;
+  while (start <= text.size()) {
+    const std::size_t comma = std::min(text.find(',', start), text.size());
+    const std::string word = text.substr(start, comma - start);
+    const auto found = std::find(known.begin(), known.end(), word);
+    if (found == known.end()) return must_be(word, known);
+    const auto& add = element_words()[static_cast<std::size_t>(found - known.begin())].kinds;
+    kinds.insert(kinds.end(), add.begin(), add.end());
+    start = comma + 1;
+  }
+  return {};
+}
+
+// What every study takes: case, state, prefault voltage, impedances, output.
+void add_study_options(CLI::App& app, Command& c, Texts& t) {
   app.add_option("CASE", c.case_file, "case file, or - for standard input")->required();
-  auto* bus = app.add_option("--bus", c.buses,
-                             one_place ? "bus of the fault; may be repeated"
-                                       : "only this bus; may be repeated. Default: all buses in service");
-  bus->type_name("ID")->expected(1)->multi_option_policy(CLI::MultiOptionPolicy::TakeAll);
-  if (one_place) bus->required();
-  app.add_option("--fault", t.kinds,
-                 "kinds of fault, separated by commas: 3ph, lg, ll, llg. Default: all four")
-      ->type_name("KINDS")
-      ->check(into(read_kinds, c.study.kinds));
   app.add_option("--scenario", c.scenario, "state of the network, by its id in the case. Default: as written")
       ->type_name("ID");
   app.add_option("--case-kind", t.case_kind,
@@ -137,6 +166,29 @@ void add_study_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
       ->check(into(read_impedance, c.study.earth_ohm));
   app.add_flag("--shunts", c.study.include_shunts,
                "keep line charging and shunts in positive and negative sequence too");
+  app.add_option("--threads", c.study.threads, "threads; results do not depend on it. Default: all cores")
+      ->type_name("N")
+      ->check(CLI::Range(1, 256));
+  app.add_option("--format", c.format, "text (default), csv or json")
+      ->type_name("FORMAT")
+      ->check(one_of({"text", "csv", "json"}));
+  app.add_option("--output", c.output, "write to FILE, whole or not at all. Default: standard output")
+      ->type_name("FILE");
+  app.add_flag("--timing", c.timing,
+               "print on standard error what reading, model building, solving and writing took");
+}
+
+void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
+  add_study_options(app, c, t);
+  auto* bus = app.add_option("--bus", c.buses,
+                             one_place ? "bus of the fault; may be repeated"
+                                       : "only this bus; may be repeated. Default: all buses in service");
+  bus->type_name("ID")->expected(1)->multi_option_policy(CLI::MultiOptionPolicy::TakeAll);
+  if (one_place) bus->required();
+  app.add_option("--fault", t.kinds,
+                 "kinds of fault, separated by commas: 3ph, lg, ll, llg. Default: all four")
+      ->type_name("KINDS")
+      ->check(into(read_kinds, c.study.kinds));
   app.add_option(
          "--depth", c.study.fault.depth,
          "voltages, branch currents and neutral currents up to N buses away. Default: 0, the faulted bus")
@@ -145,19 +197,10 @@ void add_study_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
   app.add_flag(
       "--cross-check", c.cross_check,
       "solve every fault again in phase coordinates and print the largest difference; above 1e-6 exit 1");
-  app.add_option("--threads", c.study.threads,
-                 "threads for the solution; results do not depend on it. Default: all cores")
-      ->type_name("N")
-      ->check(CLI::Range(1, 256));
-  app.add_option("--format", c.format, "text (default), csv or json")
-      ->type_name("FORMAT")
-      ->check(one_of({"text", "csv", "json"}));
   app.add_option("--table", c.table,
                  "csv: faults (default), one row per fault, or contributions, one row per element and fault")
       ->type_name("TABLE")
       ->check(one_of({"faults", "contributions"}));
-  app.add_option("--output", c.output, "write to FILE, whole or not at all. Default: standard output")
-      ->type_name("FILE");
 }
 
 std::string describe(const CLI::App& app, const std::string& what) {
@@ -195,7 +238,7 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
       "sweep",
       "Faults at every bus: current, X/R, peak, earth current and Thevenin impedances.\nExample: kiloamp "
       "sweep plant.json --fault 3ph,lg --scenario \"T1 out\"");
-  add_study_options(*sweep, c, t, false);
+  add_fault_options(*sweep, c, t, false);
   sweep->add_flag(
       "--contributions", c.contributions,
       "text: a table of the currents from every element at the bus. CSV: see --table; JSON has them always");
@@ -204,12 +247,32 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
       "fault",
       "Faults at one bus, with the currents of every element, voltages and neutral currents.\nExample: "
       "kiloamp fault plant.json --bus MAIN-11 --fault lg --earth-impedance 5,0 --depth 1");
-  add_study_options(*fault, c, t, true);
+  add_fault_options(*fault, c, t, true);
+
+  CLI::App* outages = app.add_subcommand(
+      "outages",
+      "Three-phase and line-to-ground current at every bus with each element out alone: largest and "
+      "smallest, and the outage that\ngoverns; outages that split the network.\nExample: kiloamp outages "
+      "plant.json --elements lines,transformers --area main");
+  add_study_options(*outages, c, t);
+  outages
+      ->add_option("--depth", t.depth,
+                   "for each bus only outages up to N branches away. Default: all outages")
+      ->type_name("N")
+      ->check(CLI::Range(0, 1000000));
+  outages->add_option("--area", c.outages.zone, "only buses of this zone of the case. Default: all")
+      ->type_name("ZONE");
+  outages
+      ->add_option("--elements", t.elements,
+                   "what goes out, separated by commas: feeders, machines, motors, lines, transformers, "
+                   "reactors, couplers, earthing. Default: all but motors and earthing")
+      ->type_name("KINDS")
+      ->check(into(read_elements, c.outages.kinds));
 
   // The nearest verb is worth more than the parser's own words for an unknown one.
   if (!arguments.empty() && arguments.front().rfind('-', 0) != 0 && arguments.front() != "check" &&
-      arguments.front() != "sweep" && arguments.front() != "fault") {
-    err << "kiloamp: " << must_be(arguments.front(), {"check", "sweep", "fault"})
+      arguments.front() != "sweep" && arguments.front() != "fault" && arguments.front() != "outages") {
+    err << "kiloamp: " << must_be(arguments.front(), {"check", "sweep", "fault", "outages"})
         << "\nkiloamp --help explains\n";
     return {std::nullopt, kInputWrong};
   }
@@ -244,6 +307,8 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
   c.verb = app.get_subcommands().front()->get_name();
   if (t.case_kind == "min") c.study.case_kind = CaseKind::min;
   if (c.verb == "fault") c.contributions = true;
+  c.outages.depth = t.depth;
+  c.outages.threads = c.study.threads;
   const auto misuse = [&](bool wrong, const char* what) {
     if (wrong) err << "kiloamp: " << what << "\n";
     return wrong;

@@ -5,12 +5,12 @@
 #include <string>
 #include <vector>
 
-#include "engine/study/study.hpp"
+#include "engine/study/outages.hpp"
 
 namespace kiloamp {
 
 struct Command {
-  std::string verb;  ///< check, sweep, fault
+  std::string verb;  ///< check, sweep, fault, outages
   std::string case_file;
   std::vector<std::string> buses;
   std::optional<std::string> scenario;
@@ -18,8 +18,10 @@ struct Command {
   std::string format = "text";
   std::string table = "faults";
   std::optional<std::string> output;
+  OutageOptions outages;  ///< of the verb outages; threads are those of the study
   bool contributions = false;
   bool cross_check = false;
+  bool timing = false;
 };
 
 /// @return the command, or the exit code when there is nothing to run: help and version went to `out`,

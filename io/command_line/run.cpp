@@ -1,6 +1,10 @@
 #include "io/command_line/run.hpp"
 
+#include <unistd.h>
+
 #include <algorithm>
+#include <chrono>
+#include <cmath>
 #include <csignal>
 #include <new>
 #include <ostream>
@@ -11,10 +15,40 @@
 #include "io/command_line/whole_file.hpp"
 #include "reports/check_report.hpp"
 #include "reports/fault_report.hpp"
+#include "reports/outage_report.hpp"
 
 namespace kiloamp {
 
 namespace {
+
+// What each stage took, for --timing.
+class Stages {
+ public:
+  /// Ends the stage that is running and names it.
+  void next(const char* name) {
+    const auto now = std::chrono::steady_clock::now();
+    done_.emplace_back(name, std::chrono::duration<double, std::milli>(now - start_).count());
+    start_ = now;
+  }
+  /// Moves part of the stage just ended to a stage of its own, before it.
+  void apart(const char* name, double ms) {
+    done_.back().second -= ms;
+    done_.insert(done_.end() - 1, {name, ms});
+  }
+  void print(std::ostream& err) const {
+    err << "timing [ms]:";
+    double sum = 0;
+    for (const auto& [name, ms] : done_) {
+      err << ' ' << name << ' ' << std::llround(ms) << ',';
+      sum += ms;
+    }
+    err << " together " << std::llround(sum) << '\n';
+  }
+
+ private:
+  std::chrono::steady_clock::time_point start_ = std::chrono::steady_clock::now();
+  std::vector<std::pair<const char*, double>> done_;
+};
 
 // Where the report goes: standard output, or a file that appears when all is written.
 class Output {
@@ -76,17 +110,54 @@ std::unique_ptr<FaultReport> make_report(const Command& c, const Study& study, c
   return text_report(study, facts, std::move(sink));
 }
 
-int run_faults(const Command& c, const Study& study, const ReadResult& read, std::ostream& out,
-               std::ostream& err) {
-  const ReportFacts facts{c.verb,          c.case_file == "-" ? "standard input" : c.case_file,
-                          read.sha256,     read.remarks.size(),
-                          c.contributions, c.verb == "fault" || c.study.fault.depth > 0};
+ReportFacts facts_of(const Command& c, const ReadResult& read) {
+  return {c.verb,          c.case_file == "-" ? "standard input" : c.case_file,
+          read.sha256,     read.remarks.size(),
+          c.contributions, c.verb == "fault" || c.study.fault.depth > 0};
+}
+
+int run_outages(const Command& c, const Study& study, const ReadResult& read, Stages& stages,
+                std::ostream& out, std::ostream& err) {
+  OutageOptions options = c.outages;
+  if (options.zone && std::none_of(study.network().buses.begin(), study.network().buses.end(),
+                                   [&](const Bus& b) { return b.zone == options.zone; })) {
+    err << "kiloamp: --area \"" << *options.zone << "\" is not a zone of this case\n";
+    return kInputWrong;
+  }
+  if (::isatty(STDERR_FILENO) != 0)
+    options.progress = [&err](std::size_t done, std::size_t all) {
+      err << "\routages: " << done << " of " << all << (done == all ? "\n" : "") << std::flush;
+    };
+  Output output(c.output, out);
+  const OutageTable table = single_outages(study, options);
+  stages.next("outages");
+  const OutageFormat format = c.format == "csv"    ? OutageFormat::csv
+                              : c.format == "json" ? OutageFormat::json
+                                                   : OutageFormat::text;
+  write_outages(study, table, facts_of(c, read), format, output.sink());
+  output.commit();
+  return kRan;
+}
+
+int run_faults(const Command& c, const Study& study, const ReadResult& read, Stages& stages,
+               double& formulas_ms, std::ostream& out, std::ostream& err) {
+  const ReportFacts facts = facts_of(c, read);
   Output output(c.output, out);
   const auto report = make_report(c, study, facts, output.sink());
   std::optional<CrossCheck> check;
-  if (c.cross_check) check = cross_check(study);
+  if (c.cross_check) {
+    check = cross_check(study);
+    stages.next("cross-check");
+  }
   report->begin();
-  study.for_each_fault([&](const FaultResult& result) { report->fault(result); });
+  using Clock = std::chrono::steady_clock;
+  auto solving_since = Clock::now();
+  study.for_each_fault([&](const FaultResult& result) {
+    if (c.timing)
+      formulas_ms += std::chrono::duration<double, std::milli>(Clock::now() - solving_since).count();
+    report->fault(result);
+    if (c.timing) solving_since = Clock::now();
+  });
   report->end(check ? &*check : nullptr);
   output.commit();
   if (!check) return kRan;
@@ -115,7 +186,9 @@ std::string place_of(const Network& network, const StudyOptions& options,
 }
 
 int run_command(Command c, std::ostream& out, std::ostream& err) {
+  Stages stages;
   ReadResult read = read_case(c.case_file);
+  stages.next("reading");
   if (!read.network) {
     err << render(read.errors);
     return kInputWrong;
@@ -123,7 +196,18 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
   if (!resolve(c, *read.network, err)) return kInputWrong;
   try {
     const Study study(*read.network, c.study);
-    if (c.verb != "check") return run_faults(c, study, read, out, err);
+    stages.next("notes");
+    stages.apart("model", study.timing().model_ms);
+    stages.apart("solution", study.timing().solution_ms);
+    if (c.verb != "check") {
+      double formulas_ms = 0;
+      const int code = c.verb == "outages" ? run_outages(c, study, read, stages, out, err)
+                                           : run_faults(c, study, read, stages, formulas_ms, out, err);
+      stages.next("writing");
+      if (formulas_ms > 0) stages.apart("fault formulas", formulas_ms);
+      if (c.timing) stages.print(err);
+      return code;
+    }
     Output output(c.output, out);
     std::string text = check_text(study, c.case_file == "-" ? "standard input" : c.case_file);
     if (!read.remarks.empty()) text += "\nOutside the usual range, to be confirmed:\n" + render(read.remarks);
