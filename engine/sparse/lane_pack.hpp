@@ -10,13 +10,24 @@ namespace kiloamp::sparse {
 /// Two doubles in one register; the vector extension of GCC and Clang.
 using TwoDoubles = double __attribute__((vector_size(16)));
 
+/// One double of a pair. Constant subscripts: GCC 12 under sanitizers reads a variable subscript of a vector
+/// before it is set.
+inline double get_of(const TwoDoubles& pair, int k) { return k == 0 ? pair[0] : pair[1]; }
+inline void set_of(TwoDoubles& pair, int k, double value) {
+  if (k == 0) {
+    pair[0] = value;
+  } else {
+    pair[1] = value;
+  }
+}
+
 /// Four doubles as two pairs. Not a 32-byte vector: where the machine has none, GCC 12 keeps such a vector in
 /// memory, which measured five times slower in the column solver.
 struct FourDoubles {
   TwoDoubles low;
   TwoDoubles high;
 
-  double operator[](int k) const { return k < 2 ? low[k] : high[k - 2]; }
+  double operator[](int k) const { return k < 2 ? get_of(low, k) : get_of(high, k - 2); }
   FourDoubles& operator+=(const FourDoubles& b) {
     low += b.low;
     high += b.high;
@@ -84,14 +95,17 @@ struct Pack<std::complex<double>, Width> {
 template <typename Scalar>
 inline constexpr bool kIsComplex = !std::is_same_v<Scalar, double>;
 
+inline double at_lane(const TwoDoubles& from, int lane) { return get_of(from, lane); }
+inline double at_lane(const FourDoubles& from, int lane) { return from[lane]; }
+
 template <int Width>
 inline void set_lane(Doubles<Width>& to, int lane, double value) {
   if constexpr (Width == 1) {
     to = value;
   } else if constexpr (Width == 2) {
-    to[lane] = value;
+    set_of(to, lane, value);
   } else {
-    (lane < 2 ? to.low : to.high)[lane % 2] = value;
+    set_of(lane < 2 ? to.low : to.high, lane % 2, value);
   }
 }
 
@@ -100,7 +114,7 @@ inline double get_lane(const Doubles<Width>& from, int lane) {
   if constexpr (Width == 1) {
     return from;
   } else {
-    return from[lane];
+    return at_lane(from, lane);
   }
 }
 
