@@ -68,7 +68,8 @@ BOOST_AUTO_TEST_CASE(mistakes_on_the_command_line_are_named_with_what_was_meant)
     BOOST_TEST(o.out == "");
     BOOST_TEST(lines(o.err).front() == first_line);
   };
-  complains({"swep", plant}, "kiloamp: \"swep\" is not one of check, sweep, fault; did you mean sweep?");
+  complains({"swep", plant},
+            "kiloamp: \"swep\" is not one of check, sweep, fault, outages; did you mean sweep?");
   complains({"sweep", plant, "--fautl", "lg"},
             "kiloamp: \"--fautl\" is not an option here; did you mean --fault?");
   complains({"sweep", plant, "--fault", "lgg"},
@@ -243,6 +244,28 @@ BOOST_AUTO_TEST_CASE(cross_check_is_printed_and_agrees) {
   BOOST_TEST(
       o.out.find("cross-check  solved again in phase coordinates: 148 faults, largest relative difference") !=
       std::string::npos);
+}
+
+// Two sources of 1 and 4 ohm at 10 kV on one bus: intact 10/sqrt(3)/0.8 = 7.217 kA, without either 1.443
+// and 5.774 kA.
+BOOST_AUTO_TEST_CASE(outages_of_a_hand_worked_case) {
+  const Folder folder;
+  const fs::path file = folder.path / "two.json";
+  std::ofstream(file)
+      << R"({"format":"kiloamp-case","version":1,"frequency_hz":50,"buses":[{"id":"B","nominal_kv":10,"zone":"z"}],
+    "network_feeders":[{"id":"Q1","bus":"B","max":{"r1_ohm":0,"x1_ohm":1}},{"id":"Q4","bus":"B","max":{"r1_ohm":0,"x1_ohm":4}}]})";
+  const Outcome o = kiloamp_run(
+      {"outages", file.string(), "--format", "json", "--area", "z", "--elements", "feeders", "--depth", "0"});
+  BOOST_TEST(o.code == 0);
+  const auto row = nlohmann::json::parse(o.out)["buses"][0];
+  const auto close = boost::test_tools::tolerance(1e-4);
+  BOOST_TEST(row["intact_ka"].get<double>() == 7.2169, close);
+  BOOST_TEST(row["smallest_ka"].get<double>() == 1.4434, close);
+  BOOST_TEST(row["smallest_outage"] == "Q1");
+  BOOST_TEST(row["largest_outage"].is_null());
+  BOOST_TEST(kiloamp_run({"outages", file.string(), "--elements", "lines", "--format", "csv"})
+                 .out.find("B,10.000000,three_phase,7.216878,7.216878,,7.216878,\r\n") != std::string::npos);
+  BOOST_TEST(kiloamp_run({"outages", file.string(), "--area", "y"}).code == 2);
 }
 
 BOOST_AUTO_TEST_SUITE_END()
