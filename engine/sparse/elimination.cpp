@@ -195,7 +195,7 @@ class Eliminator {
       Stripe* const to = matrix.row(map[r]);
       const Stripe* const from = update.row(r);
       for (Index c = 0; c <= r; ++c) {
-        Entry entry;
+        Entry entry{};
         Entry part;
         Front::get(part, from, c);
         Front::get(entry, to, map[c]);
@@ -234,7 +234,7 @@ class Eliminator {
   }
 
   static void factor_at(Stripe& factor, const Stripe* pivot_row, Index column, const Entry& inverse) {
-    Entry entry;
+    Entry entry{};
     Entry scaled;
     Front::get(entry, pivot_row, column);
     multiply(scaled, entry, inverse);
@@ -246,7 +246,7 @@ class Eliminator {
     Entry* const column = factors_.slots.get() + plan_.column_begin[at(p)];
     Size size{};
     for (Index c = 0; c < length; ++c) {
-      Entry entry;
+      Entry entry{};
       Size other;
       Front::get(entry, row, c);
       square_size(other, entry);

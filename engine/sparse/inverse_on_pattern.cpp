@@ -101,7 +101,7 @@ class Inverter {
       const Stripe* const from = parent.row(map[r]);
       clear(row[Front::stripes(r) - 1]);
       for (Index c = 0; c <= r; ++c) {
-        Entry entry;
+        Entry entry{};
         Front::get(entry, from, map[c]);
         Front::set(row, c, entry);
       }
@@ -157,7 +157,7 @@ class Inverter {
       for (std::size_t t = 0; t < stripes; ++t) clear(y[q][t]);
       if (stripes > 0) clear(w[q][stripes - 1]);
       for (Index c = 0; c < begin; ++c) {
-        Entry entry;
+        Entry entry{};
         negate(entry, factor[q][c]);
         for (Index b = 0; b < q; ++b) {
           Entry inner;
@@ -186,7 +186,7 @@ class Inverter {
       const std::size_t last = Front::stripes(r) - 1;
       Stripe spread[Count];
       Stripe dot[Count];
-      Entry entry;
+      Entry entry{};
       for (int q = 0; q < Count; ++q) {
         Front::get(entry, w[q], r);
         Front::spread(spread[q], entry);
@@ -214,7 +214,7 @@ class Inverter {
     for (Index c = begin; c < row; ++c) {
       const Stripe* const other = matrix.row(c);
       Entry sum;
-      Entry entry;
+      Entry entry{};
       clear(sum);
       for (Index i = 0; i < row; ++i) {
         Front::get(entry, i <= c ? other : matrix.row(i), i <= c ? i : c);
@@ -224,7 +224,7 @@ class Inverter {
     }
     Entry diagonal = factor[row];
     for (Index i = 0; i < row; ++i) {
-      Entry entry;
+      Entry entry{};
       Front::get(entry, mine, i);
       subtract_product(diagonal, entry, factor[i]);
     }
