@@ -21,13 +21,23 @@ struct ReportFacts {
   bool surroundings = false;   ///< text: voltages, branch and neutral currents too
 };
 
-/// begin, then each fault, then end. CSV and JSON pass each fault on at once; text keeps the rows of its
-/// table.
+/// What some faults in a row become in a report, written by one thread.
+class ReportPiece {
+ public:
+  virtual ~ReportPiece() = default;
+  virtual void fault(const FaultResult& result) = 0;
+};
+
+/// begin, then the pieces in the order of their faults, then end. CSV and JSON pass each piece on at once;
+/// text keeps the rows of its table.
 class FaultReport {
  public:
   virtual ~FaultReport() = default;
   virtual void begin() = 0;
-  virtual void fault(const FaultResult& result) = 0;
+  /// Pieces may be filled on several threads at once.
+  [[nodiscard]] virtual std::unique_ptr<ReportPiece> make_piece() const = 0;
+  /// Takes what a piece of this report holds and leaves it empty, to be filled again.
+  virtual void add(ReportPiece& piece) = 0;
   virtual void end(const CrossCheck* check) = 0;
 };
 

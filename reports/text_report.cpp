@@ -36,21 +36,9 @@ void add_phases(std::vector<std::string>& cells, const BySequence<Complex>& sequ
   for (const Complex phase : to_phases(sequence)) add_phasor(cells, phase);
 }
 
-class TextReport : public FaultReport {
+class TextPiece : public ReportPiece {
  public:
-  TextReport(const Study& study, ReportFacts facts, Sink sink)
-      : study_(study), facts_(std::move(facts)), sink_(std::move(sink)) {
-    table_.column("bus", "", Align::left);
-    table_.column("nominal", "kV", Align::decimal);
-    table_.column("fault", "", Align::left);
-    table_.column("current", "kA", Align::decimal);
-    table_.column("X/R", "", Align::decimal);
-    table_.column("peak", "kA", Align::decimal);
-    table_.column("earth", "kA", Align::decimal);
-    for (const char* z : {"R1", "X1", "R0", "X0"}) table_.column(z, "ohm", Align::decimal);
-  }
-
-  void begin() override { sink_(heading_block(study_, facts_) + "\n"); }
+  TextPiece(const Study& study, const ReportFacts& facts) : study_(study), facts_(facts) {}
 
   void fault(const FaultResult& r) override {
     const bool again = last_ && *last_ == r.fault.bus;
@@ -66,31 +54,12 @@ class TextReport : public FaultReport {
       cells.push_back(z ? readable(z->real()) : "-");
       cells.push_back(z ? readable(z->imag()) : "-");
     }
-    table_.row(std::move(cells));
-    if (facts_.contributions) details_ += detail(r);
+    rows.push_back(std::move(cells));
+    if (facts_.contributions) details += detail(r);
   }
 
-  void end(const CrossCheck* check) override {
-    sink_(table_.text());
-    sink_(
-        "\ncurrent: largest phase current, rms. earth: 3 I0. R1, X1, R0, X0: Thevenin impedances; - : no "
-        "path, or no value.\n");
-    if (table_.was_shortened())
-      sink_("Long names are shortened in the middle (…); CSV and JSON carry them whole.\n");
-    sink_(details_);
-    if (check != nullptr) {
-      std::string text = "solved again in phase coordinates: " + std::to_string(check->faults) +
-                         " faults, largest relative difference ";
-      text += readable(check->largest);
-      if (check->largest > 0)
-        text += " (" + check->quantity + ", " + fault_words(check->kind) + " at " +
-                study_.network().bus(check->bus).id + ")";
-      sink_("\n" + paragraph("cross-check  ",
-                             text + (check->largest <= kCrossCheckLimit ? ": agrees"
-                                                                        : ": DISAGREES, limit 0.000001")));
-    }
-    sink_("\n" + cautions_block());
-  }
+  std::vector<std::vector<std::string>> rows;
+  std::string details;
 
  private:
   std::string detail(const FaultResult& r) {
@@ -153,11 +122,64 @@ class TextReport : public FaultReport {
   }
 
   const Study& study_;
+  const ReportFacts& facts_;
+  std::optional<BusIndex> last_;
+};
+
+class TextReport : public FaultReport {
+ public:
+  TextReport(const Study& study, ReportFacts facts, Sink sink)
+      : study_(study), facts_(std::move(facts)), sink_(std::move(sink)) {
+    table_.column("bus", "", Align::left);
+    table_.column("nominal", "kV", Align::decimal);
+    table_.column("fault", "", Align::left);
+    table_.column("current", "kA", Align::decimal);
+    table_.column("X/R", "", Align::decimal);
+    table_.column("peak", "kA", Align::decimal);
+    table_.column("earth", "kA", Align::decimal);
+    for (const char* z : {"R1", "X1", "R0", "X0"}) table_.column(z, "ohm", Align::decimal);
+  }
+
+  void begin() override { sink_(heading_block(study_, facts_) + "\n"); }
+  std::unique_ptr<ReportPiece> make_piece() const override {
+    return std::make_unique<TextPiece>(study_, facts_);
+  }
+  void add(ReportPiece& piece) override {
+    auto& from = static_cast<TextPiece&>(piece);
+    for (auto& row : from.rows) table_.row(std::move(row));
+    details_ += from.details;
+    from.rows.clear();
+    from.details.clear();
+  }
+
+  void end(const CrossCheck* check) override {
+    sink_(table_.text());
+    sink_(
+        "\ncurrent: largest phase current, rms. earth: 3 I0. R1, X1, R0, X0: Thevenin impedances; - : no "
+        "path, or no value.\n");
+    if (table_.was_shortened())
+      sink_("Long names are shortened in the middle (…); CSV and JSON carry them whole.\n");
+    sink_(details_);
+    if (check != nullptr) {
+      std::string text = "solved again in phase coordinates: " + std::to_string(check->faults) +
+                         " faults, largest relative difference ";
+      text += readable(check->largest);
+      if (check->largest > 0)
+        text += " (" + check->quantity + ", " + fault_words(check->kind) + " at " +
+                study_.network().bus(check->bus).id + ")";
+      sink_("\n" + paragraph("cross-check  ",
+                             text + (check->largest <= kCrossCheckLimit ? ": agrees"
+                                                                        : ": DISAGREES, limit 0.000001")));
+    }
+    sink_("\n" + cautions_block());
+  }
+
+ private:
+  const Study& study_;
   ReportFacts facts_;
   Sink sink_;
   TextTable table_;
   std::string details_;
-  std::optional<BusIndex> last_;
 };
 
 }  // namespace

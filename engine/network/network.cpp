@@ -50,15 +50,4 @@ const char* kind_name(ElementKind kind) { return kNames[static_cast<std::size_t>
 const Element& element(const Network& network, ElementRef ref) { return find_element(network, ref); }
 Element& element(Network& network, ElementRef ref) { return find_element(network, ref); }
 
-IdTable id_table(const Network& network) {
-  IdTable table;
-  std::size_t count = 0;
-  for_each_section(network, [&](ElementKind, const auto& section) { count += section.size(); });
-  table.reserve(count);
-  for_each_section(network, [&](ElementKind kind, const auto& section) {
-    for (std::uint32_t i = 0; i < section.size(); ++i) table.emplace(section[i].id, ElementRef{kind, i});
-  });
-  return table;
-}
-
 }  // namespace kiloamp

@@ -1,7 +1,6 @@
 // The network as the user described it, in engineering units.
 #pragma once
 #include <array>
-#include <unordered_map>
 
 #include "engine/network/branches.hpp"
 #include "engine/network/devices.hpp"
@@ -66,10 +65,6 @@ struct Network {
 /// The common part of the element that `ref` names; ref must be of this network.
 [[nodiscard]] const Element& element(const Network& network, ElementRef ref);
 [[nodiscard]] Element& element(Network& network, ElementRef ref);
-
-/// Every id of the network and what bears it; ids are unique over the whole network.
-using IdTable = std::unordered_map<std::string, ElementRef>;
-[[nodiscard]] IdTable id_table(const Network& network);
 
 /// Calls visit(kind, vector) for each section, in ElementKind order.
 template <typename AnyNetwork, typename Visit>

@@ -98,7 +98,17 @@ void warn_of_model(const Network& n, const SequenceModel& model, const SolutionQ
 
 }  // namespace
 
-Study::Study(Network network, const StudyOptions& options) : network_(std::move(network)), options_(options) {
+Study::Study(Network&& network, const StudyOptions& options)
+    : network_(std::move(network)), options_(options) {
+  try {
+    prepare();
+  } catch (...) {
+    network = std::move(network_);
+    throw;
+  }
+}
+
+void Study::prepare() {
   const auto start = std::chrono::steady_clock::now();
   if (options_.scenario) {
     apply_scenario(network_, *options_.scenario);
@@ -107,6 +117,9 @@ Study::Study(Network network, const StudyOptions& options) : network_(std::move(
   defaults_ = fill_defaults(network_);
   apply_case_kind(network_, options_.case_kind);
   model_ = build_sequence_model(network_, {options_.include_shunts, {}});
+  wanted_ = options_.buses;
+  for (std::size_t b = 0; b < network_.buses.size() && options_.buses.empty(); ++b)
+    if (network_.buses[b].is_in_service()) wanted_.push_back(static_cast<BusIndex>(b));
   const auto modelled = std::chrono::steady_clock::now();
   solver_ = std::make_unique<FaultSolver>(model_, prefault_of(network_, options_.prefault), options_.threads);
   using Milliseconds = std::chrono::duration<double, std::milli>;
@@ -120,21 +133,18 @@ Study::Study(Network network, const StudyOptions& options) : network_(std::move(
   warn_of_model(network_, model_, solver_->quality(), warnings_);
 }
 
-void Study::for_each_fault(const std::function<void(const FaultResult&)>& visit) const {
-  const auto workspace = solver_->make_workspace();
-  FaultResult result;
-  const auto at_bus = [&](BusIndex bus) {
-    for (const FaultKind kind : options_.kinds) {
-      solver_->solve({bus, kind, options_.phase_ohm, options_.earth_ohm}, options_.fault, *workspace, result);
-      visit(result);
-    }
-  };
-  if (!options_.buses.empty()) {
-    for (const BusIndex bus : options_.buses) at_bus(bus);
-    return;
+void FaultLoop::at_bus(BusIndex bus, const std::function<void(const FaultResult&)>& visit) {
+  const StudyOptions& options = study_->options();
+  for (const FaultKind kind : options.kinds) {
+    study_->solver().solve({bus, kind, options.phase_ohm, options.earth_ohm}, options.fault, *workspace_,
+                           result_);
+    visit(result_);
   }
-  for (std::size_t b = 0; b < network_.buses.size(); ++b)
-    if (network_.buses[b].is_in_service()) at_bus(static_cast<BusIndex>(b));
+}
+
+void Study::for_each_fault(const std::function<void(const FaultResult&)>& visit) const {
+  FaultLoop loop(*this);
+  for (const BusIndex bus : wanted_) loop.at_bus(bus, visit);
 }
 
 const char* fault_name(FaultKind kind) {

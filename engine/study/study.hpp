@@ -34,9 +34,10 @@ struct StudyOptions {
 /// refer to each other.
 class Study {
  public:
+  /// @param network  taken; given back, in the studied state, when the constructor throws
   /// @throws NetworkError            the state contradicts itself (loop of vector groups)
   /// @throws sparse::NumericalError  a sequence network cannot be solved
-  Study(Network network, const StudyOptions& options);
+  Study(Network&& network, const StudyOptions& options);
   Study(const Study&) = delete;
   Study& operator=(const Study&) = delete;
 
@@ -57,11 +58,15 @@ class Study {
   [[nodiscard]] const Timing& timing() const { return timing_; }
   [[nodiscard]] const std::string& scenario_id() const { return scenario_id_; }
 
-  /// Solves every wanted fault, bus by bus in the case's order and kind by kind, and hands each to `visit`;
-  /// the result is only valid during the call.
+  /// The buses whose faults are wanted: those of the options, else all in service in the case's order.
+  [[nodiscard]] const std::vector<BusIndex>& wanted_buses() const { return wanted_; }
+  /// Solves every wanted fault, bus by bus and kind by kind, and hands each to `visit`; the result is only
+  /// valid during the call. FaultLoop does the same for one bus at a time.
   void for_each_fault(const std::function<void(const FaultResult&)>& visit) const;
 
  private:
+  void prepare();
+
   Network network_;
   StudyOptions options_;
   std::string scenario_id_;
@@ -69,7 +74,21 @@ class Study {
   SequenceModel model_;
   std::unique_ptr<FaultSolver> solver_;
   std::vector<std::string> warnings_;
+  std::vector<BusIndex> wanted_;
   Timing timing_;
+};
+
+/// One thread's way through the faults of a study.
+class FaultLoop {
+ public:
+  explicit FaultLoop(const Study& study) : study_(&study), workspace_(study.solver().make_workspace()) {}
+  /// The wanted kinds of fault at one bus, in order; the result is only valid during the call.
+  void at_bus(BusIndex bus, const std::function<void(const FaultResult&)>& visit);
+
+ private:
+  const Study* study_;
+  FaultSolver::WorkspacePtr workspace_;
+  FaultResult result_;
 };
 
 /// The cautions that every report prints, in order. Source: common practice; standards named where a caution

@@ -4,6 +4,7 @@
 #include <cerrno>
 #include <cstring>
 #include <fstream>
+#include <future>
 #include <iostream>
 #include <iterator>
 #include <nlohmann/json.hpp>
@@ -365,7 +366,7 @@ InputError located(const std::string& file, const Network& network, const Findin
 
 ReadResult read_case_text(std::string_view text, const std::string& file) {
   ReadResult result;
-  result.sha256 = sha256(text);
+  auto digest = std::async(std::launch::async, [text] { return sha256(text); });
   if (text.find_first_not_of(" \t\r\n") == std::string_view::npos)
     return failed(file, "the file is empty", "must be one JSON document", "give the file of a case");
   Network network;
@@ -387,6 +388,7 @@ ReadResult read_case_text(std::string_view text, const std::string& file) {
                        error.allowed, error.remedy);
     }
   }
+  result.sha256 = digest.get();
   result.errors = complaints.take();
   if (result.errors.empty()) result.network = std::move(network);
   return result;

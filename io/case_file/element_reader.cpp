@@ -183,11 +183,10 @@ void ElementReader::take_id(const Values& values, const Scope& scope) {
   if (given->text.empty() || characters(given->text) > kMaxIdLength || !printable(given->text))
     return complain(scope, "id = " + shown(*given), "must be 1 to 64 printable characters",
                     "choose a shorter, printable name");
-  const auto [place, fresh] = ids_.emplace(given->text, scope.ref);
-  if (fresh) return;
-  const ElementRef first = place->second;
-  complain(scope, "id = " + in_quotes(given->text) + " is taken by " + name_of(first.kind, {}, first.index),
-           "must be unique over the whole file", "rename one of the two and what refers to it");
+  if (const auto first = ids_.add(network_, scope.ref))
+    complain(scope,
+             "id = " + in_quotes(given->text) + " is taken by " + name_of(first->kind, {}, first->index),
+             "must be unique over the whole file", "rename one of the two and what refers to it");
 }
 
 void ElementReader::read(ElementKind kind, const Values& values) {
@@ -404,10 +403,10 @@ void ElementReader::read_list(const Field& field, const Values& values, std::siz
 }
 
 void ElementReader::take_reference(const Field& field, const std::string& id, const Scope& scope) {
-  const auto found = ids_.find(id);
+  const auto found = ids_.find(network_, id);
   // Lists wait for the end so that their order stays that of the file.
-  if (field.type == FieldType::reference && found != ids_.end() && fits(field.target, found->second.kind))
-    field.set_reference(scope.storage, found->second);
+  if (field.type == FieldType::reference && found && fits(field.target, found->kind))
+    field.set_reference(scope.storage, *found);
   else
     pending_.push_back({scope.ref, scope.order, &field, id});
 }
@@ -419,24 +418,26 @@ void ElementReader::resolve_references() {
                       element(network_, p.owner).id,
                       table(p.owner.kind).element(network_, p.owner.index),
                       {}};
-    const auto found = ids_.find(p.id);
-    if (found != ids_.end() && fits(p.field->target, found->second.kind)) {
-      p.field->set_reference(scope.storage, found->second);
+    const auto found = ids_.find(network_, p.id);
+    if (found && fits(p.field->target, found->kind)) {
+      p.field->set_reference(scope.storage, *found);
       continue;
     }
     const std::string fault = std::string(p.field->name) + " = " + in_quotes(p.id);
     const std::string allowed =
         std::string("must be the id of ") + target_text(p.field->target) + " of this case";
-    if (found != ids_.end()) {
-      complain(scope, fault + " is " + name_of(found->second.kind, {}, found->second.index), allowed,
+    if (found) {
+      complain(scope, fault + " is " + name_of(found->kind, {}, found->index), allowed,
                "refer to an element of the right kind");
       continue;
     }
     std::string near;
     if (ids_.size() <= kMostIdsToCompare) {
       std::vector<std::string_view> known;
-      for (const auto& [id, ref] : ids_)
-        if (fits(p.field->target, ref.kind)) known.push_back(id);
+      for_each_section(network_, [&](ElementKind kind, const auto& section) {
+        if (!fits(p.field->target, kind)) return;
+        for (const auto& e : section) known.push_back(e.id);
+      });
       std::sort(known.begin(), known.end());
       near = nearest(p.id, known);
     }

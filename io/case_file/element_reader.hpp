@@ -3,6 +3,7 @@
 #include <array>
 #include <set>
 
+#include "engine/network/id_table.hpp"
 #include "io/case_file/case_reader.hpp"
 #include "io/case_file/field_table.hpp"
 #include "io/case_file/value.hpp"
@@ -49,7 +50,6 @@ class ElementReader {
   /// After the last section.
   void resolve_references();
 
-  [[nodiscard]] const IdTable& ids() const { return ids_; }
   /// Elements with an error of their own.
   [[nodiscard]] bool is_bad(ElementRef ref) const;
   /// Place in the file's order of the first element of a section.

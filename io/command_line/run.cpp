@@ -6,10 +6,12 @@
 #include <chrono>
 #include <cmath>
 #include <csignal>
+#include <deque>
 #include <new>
 #include <ostream>
 
 #include "engine/study/cross_check.hpp"
+#include "engine/study/ordered_pieces.hpp"
 #include "io/case_file/case_reader.hpp"
 #include "io/command_line/options.hpp"
 #include "io/command_line/whole_file.hpp"
@@ -20,6 +22,8 @@
 namespace kiloamp {
 
 namespace {
+
+constexpr std::size_t kBusesInPiece = 256;
 
 // What each stage took, for --timing.
 class Stages {
@@ -139,6 +143,56 @@ int run_outages(const Command& c, const Study& study, const ReadResult& read, St
   return kRan;
 }
 
+// Solves and writes on the study's threads. With `timing`, returns the part of the wall time that the
+// formulas took: that of the threads' own time.
+double write_faults(const Study& study, FaultReport& report, bool timing) {
+  using Clock = std::chrono::steady_clock;
+  struct Thread {
+    explicit Thread(const Study& s) : loop(s) {}
+    FaultLoop loop;
+    std::unique_ptr<ReportPiece> piece;
+    Clock::duration formulas{}, writing{};
+  };
+  std::deque<Thread> threads;
+  for (int t = 0; t < std::max(1, study.options().threads); ++t) {
+    threads.emplace_back(study);
+    threads.back().piece = report.make_piece();
+  }
+  const auto& buses = study.wanted_buses();
+  const auto start = Clock::now();
+  in_ordered_pieces(
+      buses.size(), kBusesInPiece, study.options().threads,
+      [&](int t, std::size_t first, std::size_t last) {
+        Thread& own = threads[static_cast<std::size_t>(t)];
+        auto since = Clock::now();
+        const auto lap = [&](Clock::duration& sum) {
+          const auto now = timing ? Clock::now() : since;
+          sum += now - since;
+          since = now;
+        };
+        for (std::size_t b = first; b < last; ++b)
+          own.loop.at_bus(buses[b], [&](const FaultResult& result) {
+            lap(own.formulas);
+            own.piece->fault(result);
+            lap(own.writing);
+          });
+      },
+      [&](int t) {
+        Thread& own = threads[static_cast<std::size_t>(t)];
+        const auto since = Clock::now();
+        report.add(*own.piece);
+        own.writing += Clock::now() - since;
+      });
+  Clock::duration formulas{}, all{};
+  for (const Thread& t : threads) {
+    formulas += t.formulas;
+    all += t.formulas + t.writing;
+  }
+  if (!timing || all.count() == 0) return 0;
+  return std::chrono::duration<double, std::milli>(Clock::now() - start).count() *
+         static_cast<double>(formulas.count()) / static_cast<double>(all.count());
+}
+
 int run_faults(const Command& c, const Study& study, const ReadResult& read, Stages& stages,
                double& formulas_ms, std::ostream& out, std::ostream& err) {
   const ReportFacts facts = facts_of(c, read);
@@ -150,14 +204,7 @@ int run_faults(const Command& c, const Study& study, const ReadResult& read, Sta
     stages.next("cross-check");
   }
   report->begin();
-  using Clock = std::chrono::steady_clock;
-  auto solving_since = Clock::now();
-  study.for_each_fault([&](const FaultResult& result) {
-    if (c.timing)
-      formulas_ms += std::chrono::duration<double, std::milli>(Clock::now() - solving_since).count();
-    report->fault(result);
-    if (c.timing) solving_since = Clock::now();
-  });
+  formulas_ms = write_faults(study, *report, c.timing);
   report->end(check ? &*check : nullptr);
   output.commit();
   if (!check) return kRan;
@@ -171,17 +218,13 @@ int run_faults(const Command& c, const Study& study, const ReadResult& read, Sta
 }
 
 // Which buses a row of a sequence network stands for.
-std::string place_of(const Network& network, const StudyOptions& options,
-                     const sparse::NumericalError& error) {
-  Network state = network;
-  if (options.scenario) apply_scenario(state, *options.scenario);
-  (void)fill_defaults(state);
+std::string place_of(const Network& state, const StudyOptions& options, const sparse::NumericalError& error) {
   const SequenceModel model = build_sequence_model(state, {options.include_shunts, {}});
   static constexpr const char* kNames[] = {"zero", "positive", "negative"};
   std::string text = std::string(kNames[error.lane()]) + " sequence, near bus ";
   const auto buses = model.buses_of(static_cast<Node>(error.row()));
   for (std::size_t i = 0; i < buses.size() && i < 3; ++i)
-    text += (i > 0 ? ", " : "") + network.bus(buses[i]).id;
+    text += (i > 0 ? ", " : "") + state.bus(buses[i]).id;
   return text;
 }
 
@@ -194,8 +237,9 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
     return kInputWrong;
   }
   if (!resolve(c, *read.network, err)) return kInputWrong;
+  std::optional<Study> made;
   try {
-    const Study study(*read.network, c.study);
+    const Study& study = made.emplace(std::move(*read.network), c.study);
     stages.next("notes");
     stages.apart("model", study.timing().model_ms);
     stages.apart("solution", study.timing().solution_ms);
@@ -219,8 +263,8 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
       err << render(located(c.case_file, *read.network, finding));
     return kInputWrong;
   } catch (const sparse::NumericalError& error) {
-    err << "kiloamp: not computed: " << error.what() << " (" << place_of(*read.network, c.study, error)
-        << ")\n";
+    err << "kiloamp: not computed: " << error.what() << " ("
+        << place_of(made ? made->network() : *read.network, c.study, error) << ")\n";
     return kNotComputed;
   }
 }

@@ -60,7 +60,7 @@ BOOST_AUTO_TEST_CASE(every_single_outage_agrees_with_real_removal) {
     BOOST_TEST_CONTEXT("seed " << seed) {
       const StudyOptions options = both_kinds(seed);
       const Network network = random_network(seed);
-      const Study study(network, options);
+      const Study study(Network(network), options);
       for_each_section(network, [&](ElementKind kind, const auto& section) {
         if (std::find(kKinds.begin(), kKinds.end(), kind) == kKinds.end()) return;
         for (std::uint32_t i = 0; i < section.size(); ++i) {

@@ -28,11 +28,17 @@ Network read(const std::string& path) {
 Network read_text(const std::string& json) { return taken(read_case_text(json, "test")); }
 
 CaseStudy::CaseStudy(Network network, StudyOptions options) {
-  ids_ = id_table(network);
   study_ = std::make_unique<Study>(std::move(network), options);
+  ids_ = IdTable(study_->network());
 }
 
-BusIndex CaseStudy::bus(const std::string& id) const { return static_cast<BusIndex>(ids_.at(id).index); }
+ElementRef CaseStudy::ref(const std::string& id) const {
+  const auto found = ids_.find(study_->network(), id);
+  if (!found) throw std::runtime_error("no element " + id + " in the case");
+  return *found;
+}
+
+BusIndex CaseStudy::bus(const std::string& id) const { return static_cast<BusIndex>(ref(id).index); }
 
 FaultResult CaseStudy::fault(const std::string& id, FaultKind kind, Complex phase_ohm, Complex earth_ohm,
                              int depth) const {
@@ -43,12 +49,12 @@ FaultResult CaseStudy::fault(const std::string& id, FaultKind kind, Complex phas
 }
 
 std::array<Complex, 3> CaseStudy::current_ka(const FaultResult& result, const std::string& id) const {
-  return find_current(result.contributions, ids_.at(id), result.fault.bus);
+  return find_current(result.contributions, ref(id), result.fault.bus);
 }
 std::array<Complex, 3> CaseStudy::current_ka(const FaultResult& result, const std::string& id,
                                              const std::string& at_bus) const {
   if (bus(at_bus) == result.fault.bus) return current_ka(result, id);
-  return find_current(result.branch_currents, ids_.at(id), bus(at_bus));
+  return find_current(result.branch_currents, ref(id), bus(at_bus));
 }
 
 BySequence<Complex> CaseStudy::voltage_kv(const FaultResult& result, const std::string& id) const {

@@ -3,6 +3,7 @@
 #include <memory>
 #include <string>
 
+#include "engine/network/id_table.hpp"
 #include "engine/study/study.hpp"
 
 namespace kiloamp::test {
@@ -29,6 +30,8 @@ class CaseStudy {
   [[nodiscard]] BySequence<Complex> voltage_kv(const FaultResult& result, const std::string& bus) const;
 
  private:
+  [[nodiscard]] ElementRef ref(const std::string& id) const;
+
   std::unique_ptr<Study> study_;
   IdTable ids_;
 };
