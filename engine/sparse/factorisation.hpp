@@ -29,7 +29,8 @@ inline constexpr double kSingularMagnification = 1e14;
 
 /// How far a lane's factors can be trusted.
 struct Accuracy {
-  /// Largest |A z - e_k|_inf over the probed columns k, where z is the column of the inverse as delivered.
+  /// Largest |A z - b|_inf probed, where z is a column of the inverse as delivered, or a sum of some, and b
+  /// the unit vectors that belong to it.
   double residual = 0;
   /// Largest |entry met in a pivot row during elimination| / |largest entry of A|.
   double growth = 1;

@@ -49,13 +49,13 @@ class Prober {
     Entry one;
     one.fill(Scalar(1));
     solver_.clear();
-    for (std::size_t c = 0; c < rows.size(); ++c) solver_.put(static_cast<int>(c), rows[c], one);
+    const auto side = [](std::size_t r) { return static_cast<int>(r % kBlock); };
+    for (std::size_t r = 0; r < rows.size(); ++r) solver_.put(side(r), rows[r], one);
     solver_.solve();
     std::fill(sums_.begin(), sums_.end(), Row{});
     for (std::size_t c = 0; c < rows.size(); ++c) {
-      for (auto& sum : sums_[at(plan_.position_of[at(rows[c])])])
-        set_lane<kBlock>(sum.re, static_cast<int>(c), -1);
-      const Entry z = solver_.get(static_cast<int>(c), rows[c]);
+      for (auto& sum : sums_[at(plan_.position_of[at(rows[c])])]) set_lane<kBlock>(sum.re, side(c), -1);
+      const Entry z = solver_.get(side(c), rows[c]);
       for (std::size_t s = 0; s < at(Lanes); ++s) {
         results[s].include({0, 0, or_infinite(parts(z[s] * values_.diagonal[at(rows[c])][s]))});
       }
@@ -129,12 +129,11 @@ std::array<ProbeResult, Lanes> probe_columns(const LaneFactors<Scalar, padded_wi
                                              std::span<const Index> rows) {
   std::array<ProbeResult, Lanes> results{};
   Prober<Scalar, Lanes> prober(factors, values);
-  for (std::size_t from = 0; from < rows.size(); from += kBlock) {
-    prober.probe(rows.subspan(from, std::min<std::size_t>(kBlock, rows.size() - from)), results);
-    const bool doubtful =
-        std::ranges::any_of(results, [](const auto& one) { return !(one.residual <= kCleanResidual); });
-    if (doubtful) prober.measure_rounding(results);
-  }
+  if (rows.empty()) return results;
+  prober.probe(rows, results);
+  const bool doubtful =
+      std::ranges::any_of(results, [](const auto& one) { return !(one.residual <= kCleanResidual); });
+  if (doubtful) prober.measure_rounding(results);
   return results;
 }
 

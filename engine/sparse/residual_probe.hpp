@@ -8,16 +8,18 @@
 
 namespace kiloamp::sparse {
 
-/// What a probe found in one lane; not-a-number counts as infinite.
+/// What a probe found in one lane; not-a-number counts as infinite. z is the sum of the columns k of one of
+/// the two solutions, b the sum of their e_k.
 struct ProbeResult {
-  double residual = 0;       // |A z - e_k|_inf
+  double residual = 0;       // |A z - b|_inf
   double rounding = 0;       // largest (|A| |z|)_i, parts taken apart: times epsilon, what rounding excuses
-  double magnification = 0;  // |a_kk z_kk|
+  double magnification = 0;  // largest |a_kk z_k|
 
   void include(const ProbeResult& other);
 };
 
-/// Solves for the columns `rows` two by two and measures each lane.
+/// Solves for the columns `rows`, in two sums that take turns, and measures each lane. A bad column shows in
+/// the sum as it shows alone, and one pass over the factors serves however many are suspect.
 template <typename Scalar, int Lanes>
 [[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(
     const LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
