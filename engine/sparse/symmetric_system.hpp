@@ -6,5 +6,4 @@
 #include "engine/sparse/analysis.hpp"
 #include "engine/sparse/factorisation.hpp"
 #include "engine/sparse/low_rank_change.hpp"
-#include "engine/sparse/outage_batch.hpp"
 #include "engine/sparse/pattern.hpp"

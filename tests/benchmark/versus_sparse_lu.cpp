@@ -105,7 +105,7 @@ struct Ours {
 
 struct Times {
   std::vector<double> cold, warm, warm_two_threads, lanes, lanes_two_threads, klu_factor, klu_refactor,
-      klu_column, klu_block, outage;
+      klu_column, klu_block;
 };
 
 /// Largest |found - column| / |column| over Z_kk and Z_kj of the pattern in the columns measured.
@@ -119,22 +119,6 @@ double disagreement(const synthetic::NetworkMatrix& network, const Ours& ours, i
     worst = std::max(worst, std::abs(ours.inverse.off_diagonal[e][0] - expected) / std::abs(expected));
   }
   return worst;
-}
-
-double outage_batch(const synthetic::NetworkMatrix& network, const Ours& ours, std::size_t count) {
-  std::vector<RankOneChange<Complex, 3>> changes;
-  for (std::size_t k = 0; k < count; ++k) {
-    const std::size_t e = k * 104729 % network.edges.size();
-    const Edge& edge = network.edges[e];
-    changes.push_back({{{edge.i, {1, 1, 1}}, {edge.j, {-1, -1, -1}}}, network.values.off_diagonal[e]});
-  }
-  std::vector<std::array<Complex, 3>> after(ours.inverse3.diagonal.size());
-  const double time = milliseconds([&] {
-    each_rank_one_change<Complex, 3>(*ours.three, changes, [&](const RankOneResponse<Complex, 3>& response) {
-      response.changed_diagonal(ours.inverse3.diagonal, after);
-    });
-  });
-  return time / static_cast<double>(count);
 }
 
 void compare(Index order) {
@@ -168,7 +152,6 @@ void compare(Index order) {
     times.lanes.push_back(warm(*ours.three, network.values, ours.inverse3, 1));
     times.warm_two_threads.push_back(warm(*ours.one, positive, ours.inverse, 2));
     times.lanes_two_threads.push_back(warm(*ours.three, network.values, ours.inverse3, 2));
-    times.outage.push_back(outage_batch(network, ours, order <= 200000 ? 64 : 8));
     const int columns = kColumns / repeats + 1;
     for (int c = 0; c < columns; ++c) {
       const int k = static_cast<int>((static_cast<long long>(repeat * columns + c) * 7919) % order);
@@ -213,8 +196,6 @@ void compare(Index order) {
   std::printf("  three lanes / one lane                  %10.2f\n", lanes / warm);
   std::printf("  one thread / two threads, one lane      %10.2f\n", warm / median(times.warm_two_threads));
   std::printf("  one thread / two threads, three lanes   %10.2f\n", lanes / median(times.lanes_two_threads));
-  std::printf("  three lanes warm / one outage           %10.1f   (outage %.4f ms)\n",
-              lanes / median(times.outage), median(times.outage));
   std::printf("  largest relative difference of entries  %10.1e\n", worst);
 }
 
