@@ -4,6 +4,8 @@
 #include <cstddef>
 #include <functional>
 #include <limits>
+#include <ranges>
+#include <type_traits>
 
 namespace kiloamp::sparse {
 namespace {
@@ -39,6 +41,7 @@ ColumnSolver<Scalar, Lanes, Block>::ColumnSolver(const LaneFactors<Scalar, padde
 template <typename Scalar, int Lanes, int Block>
 void ColumnSolver<Scalar, Lanes, Block>::clear() {
   path_.clear();
+  filled_ = {};
   if (stamp_ == std::numeric_limits<Index>::max()) {
     std::fill(forward_stamp_.begin(), forward_stamp_.end(), 0);
     std::fill(wanted_stamp_.begin(), wanted_stamp_.end(), 0);
@@ -63,6 +66,7 @@ void ColumnSolver<Scalar, Lanes, Block>::put(int which, Index row, const Entry& 
   add_path(path_, forward_stamp_, position);
   for (std::size_t k = known; k < path_.size(); ++k) x_[at(path_[k])] = Row{};
   for (std::size_t s = 0; s < at(Lanes); ++s) {
+    filled_[s] = filled_[s] || value[s] != Scalar(0);
     auto& x = x_[at(position)][s];
     set_lane<kBlock>(x.re, which, x.re[which] + std::real(value[s]));
     if constexpr (kIsComplex<Scalar>) set_lane<kBlock>(x.im, which, x.im[which] + std::imag(value[s]));
@@ -83,26 +87,44 @@ void ColumnSolver<Scalar, Lanes, Block>::forward() {
 }
 
 template <typename Scalar, int Lanes, int Block>
+template <int Only>
 void ColumnSolver<Scalar, Lanes, Block>::backward(Index p) {
+  constexpr int kFirst = Only < 0 ? 0 : Only;
+  constexpr int kEnd = Only < 0 ? Lanes : Only + 1;
   const auto* const slots = factors_->slots.get();
   const Index* const rows = plan_->rows.data();
   const Index end = plan_->diagonal_slot(p);
   Row sum{};
   for (Index slot = plan_->column_begin[at(p)]; slot < end; ++slot) {
     const Row& x = x_[at(rows[slot])];
-    for (int s = 0; s < Lanes; ++s) subtract_scaled(sum[at(s)], lane_of(slots[slot], s), x[at(s)]);
+    for (int s = kFirst; s < kEnd; ++s) subtract_scaled(sum[at(s)], lane_of(slots[slot], s), x[at(s)]);
   }
   if (forward_stamp_[at(p)] == stamp_) {
     const auto& inverse = slots[end];
-    for (int s = 0; s < Lanes; ++s) subtract_scaled(sum[at(s)], -lane_of(inverse, s), x_[at(p)][at(s)]);
+    for (int s = kFirst; s < kEnd; ++s) subtract_scaled(sum[at(s)], -lane_of(inverse, s), x_[at(p)][at(s)]);
   }
   x_[at(p)] = sum;
 }
 
 template <typename Scalar, int Lanes, int Block>
+template <typename Range>
+void ColumnSolver<Scalar, Lanes, Block>::backward_all(const Range& positions) {
+  const auto with = [&]<int Only>(std::integral_constant<int, Only>) {
+    for (const Index p : positions) backward<Only>(p);
+  };
+  if (std::count(filled_.begin(), filled_.end(), true) == 1) {
+    if (filled_[0]) return with(std::integral_constant<int, 0>{});
+    if constexpr (Lanes > 1) {
+      if (filled_[1]) return with(std::integral_constant<int, 1>{});
+    }
+  }
+  with(std::integral_constant<int, -1>{});
+}
+
+template <typename Scalar, int Lanes, int Block>
 void ColumnSolver<Scalar, Lanes, Block>::solve() {
   forward();
-  for (Index p = plan_->order; p-- > 0;) backward(p);
+  backward_all(std::views::iota(Index{0}, plan_->order) | std::views::reverse);
 }
 
 template <typename Scalar, int Lanes, int Block>
@@ -111,7 +133,7 @@ void ColumnSolver<Scalar, Lanes, Block>::solve_at(std::span<const Index> wanted)
   wanted_path_.clear();
   for (const Index row : wanted) add_path(wanted_path_, wanted_stamp_, plan_->position_of[at(row)]);
   std::sort(wanted_path_.begin(), wanted_path_.end(), std::greater<>());
-  for (const Index p : wanted_path_) backward(p);
+  backward_all(wanted_path_);
 }
 
 template <typename Scalar, int Lanes, int Block>
@@ -129,15 +151,15 @@ void ColumnSolver<Scalar, Lanes, Block>::copy(int which, std::span<Entry> out) c
 }
 
 template <typename Scalar, int Lanes, int Block>
-void ColumnSolver<Scalar, Lanes, Block>::copy_all(std::span<Entry> out) const {
-  const std::size_t order = at(plan_->order);
-  for (std::size_t row = 0; row < order; ++row) {
-    const Row& x = x_[at(plan_->position_of[row])];
-    for (int which = 0; which < Block; ++which) {
-      Entry& to = out[at(which) * order + row];
-      for (int s = 0; s < Lanes; ++s) to[at(s)] = lane_of(x[at(s)], which);
-    }
-  }
+void ColumnSolver<Scalar, Lanes, Block>::set(int which, Index row, int lane, Scalar value) {
+  auto& x = x_[at(position(row))][at(lane)];
+  set_lane<kBlock>(x.re, which, std::real(value));
+  if constexpr (kIsComplex<Scalar>) set_lane<kBlock>(x.im, which, std::imag(value));
+}
+
+template <typename Scalar, int Lanes, int Block>
+Index ColumnSolver<Scalar, Lanes, Block>::position(Index row) const {
+  return plan_->position_of[at(row)];
 }
 
 template class ColumnSolver<std::complex<double>, 1, 2>;

@@ -43,8 +43,12 @@ class ColumnSolver {
   [[nodiscard]] Entry get(int which, Index row) const;
   /// Copies solution `which`, in row order.
   void copy(int which, std::span<Entry> out) const;
-  /// Copies all kBlock solutions one behind the other, each in row order.
-  void copy_all(std::span<Entry> out) const;
+  /// Replaces one number of a solution.
+  void set(int which, Index row, int lane, Scalar value);
+  /// Place of a row in the elimination order, and so in memory.
+  [[nodiscard]] Index position(Index row) const;
+  /// All right-hand sides at one row, after solve().
+  [[nodiscard]] const Row& at_row(Index row) const { return at_position(position(row)); }
   /// All right-hand sides at one position of the elimination order, after solve().
   [[nodiscard]] const Row& at_position(Index position) const {
     return x_[static_cast<std::size_t>(position)];
@@ -53,7 +57,12 @@ class ColumnSolver {
  private:
   void add_path(std::vector<Index>& path, std::vector<Index>& stamps, Index position);
   void forward();
+  /// `Only` >= 0: the one lane whose right-hand sides are not all zero; the others get zeros.
+  template <int Only>
   void backward(Index position);
+  /// Calls backward for a range of positions with the right `Only`.
+  template <typename Range>
+  void backward_all(const Range& positions);
 
   const LaneFactors<Scalar, padded_width(Lanes)>* factors_;
   const EliminationPlan* plan_;
@@ -63,6 +72,8 @@ class ColumnSolver {
   std::vector<Index> path_;  // positions that hold a right-hand side or receive one, unsorted
   std::vector<Index> wanted_path_;
   Index stamp_ = 0;
+  std::array<bool, static_cast<std::size_t>(Lanes)>
+      filled_{};  // lanes with a right-hand side that is not zero
 };
 
 }  // namespace kiloamp::sparse

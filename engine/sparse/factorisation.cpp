@@ -231,9 +231,7 @@ typename Factorisation<Scalar, Lanes>::SparseSolver Factorisation<Scalar, Lanes>
 
 template <typename Scalar, int Lanes>
 Factorisation<Scalar, Lanes>::SparseSolver::SparseSolver(const Factorisation& factorisation)
-    : body_(factorisation.body_.get()),
-      plain_(body_->factors),
-      mended_(static_cast<std::size_t>(kBlock * Lanes)) {}
+    : body_(factorisation.body_.get()), plain_(body_->factors) {}
 
 template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::SparseSolver::clear() {
@@ -253,15 +251,16 @@ void Factorisation<Scalar, Lanes>::SparseSolver::mend() {
     if (!body_->remedies[at(s)]) continue;
     const auto plain = body_->plain_solve(s);
     for (int which = 0; which < kBlock; ++which) {
-      auto& x = mended_[at(which * Lanes + s)];
-      x.assign(at(body_->analysis->order()), Scalar(0));
+      std::vector<Scalar> x(at(body_->analysis->order()), Scalar(0));
       bool any = false;
       for (const auto& [owner, term] : right_hand_sides_) {
         if (owner != which) continue;
         x[at(term.row)] += term.value[at(s)];
         any = true;
       }
-      if (any) body_->remedies[at(s)]->solve(x, plain);
+      if (!any) continue;
+      body_->remedies[at(s)]->solve(x, plain);
+      for (std::size_t row = 0; row < x.size(); ++row) plain_.set(which, static_cast<Index>(row), s, x[row]);
     }
   }
 }
@@ -281,32 +280,12 @@ void Factorisation<Scalar, Lanes>::SparseSolver::solve_at(std::span<const Index>
 template <typename Scalar, int Lanes>
 typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::SparseSolver::get(
     int which, Index row) const {
-  Entry out = plain_.get(which, row);
-  for (int s = 0; s < Lanes; ++s) {
-    const auto& x = mended_[at(which * Lanes + s)];
-    if (!x.empty()) out[at(s)] = x[at(row)];
-  }
-  return out;
+  return plain_.get(which, row);
 }
 
 template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::SparseSolver::copy(int which, std::span<Entry> out) const {
   plain_.copy(which, out);
-  for (int s = 0; s < Lanes; ++s) {
-    const auto& x = mended_[at(which * Lanes + s)];
-    for (std::size_t row = 0; row < x.size(); ++row) out[row][at(s)] = x[row];
-  }
-}
-
-template <typename Scalar, int Lanes>
-void Factorisation<Scalar, Lanes>::SparseSolver::copy_all(std::span<Entry> out) const {
-  const std::size_t order = at(body_->analysis->order());
-  plain_.copy_all(out);
-  for (std::size_t k = 0; k < mended_.size(); ++k) {
-    const std::size_t first = k / at(Lanes) * order;
-    for (std::size_t row = 0; row < mended_[k].size(); ++row)
-      out[first + row][k % at(Lanes)] = mended_[k][row];
-  }
 }
 
 template class Factorisation<std::complex<double>, 1>;

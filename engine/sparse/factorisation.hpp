@@ -111,7 +111,12 @@ class Factorisation<Scalar, Lanes>::SparseSolver {
   void solve_at(std::span<const Index> wanted);
   [[nodiscard]] Entry get(int which, Index row) const;
   void copy(int which, std::span<Entry> out) const;
-  void copy_all(std::span<Entry> out) const;
+  /// Where a row's solution lies among those of all rows: neighbours in memory have neighbouring numbers.
+  [[nodiscard]] Index position(Index row) const { return plain_.position(row); }
+  /// All kBlock solutions at one row, side by side in each lane.
+  [[nodiscard]] const typename ColumnSolver<Scalar, Lanes>::Row& at_row(Index row) const {
+    return plain_.at_row(row);
+  }
 
  private:
   /// Recomputes the lanes that the plain factors do not serve, in full.
@@ -120,7 +125,6 @@ class Factorisation<Scalar, Lanes>::SparseSolver {
   const Body* body_;
   ColumnSolver<Scalar, Lanes> plain_;
   std::vector<std::pair<int, Term<Scalar, Lanes>>> right_hand_sides_;
-  std::vector<std::vector<Scalar>> mended_;  // [which * Lanes + lane], empty where plain_ serves
 };
 
 extern template class Factorisation<std::complex<double>, 1>;
