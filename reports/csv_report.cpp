@@ -27,19 +27,26 @@ class CsvPiece : public ReportPiece {
   CsvPiece(const Study& study, CsvTable table, const std::vector<std::string>& bus_fields)
       : study_(study), table_(table), bus_fields_(bus_fields) {}
 
-  void fault(const FaultResult& r) override {
+  void fault(const StudiedFault& studied) override {
+    const FaultResult& r = studied.result;
     if (table_ == CsvTable::contributions) {
-      for (const Contribution& c : r.contributions) contribution(r, c);
-      for (const Contribution& c : r.branch_currents) contribution(r, c);
+      for (const Contribution& c : r.contributions) contribution(studied, c);
+      for (const Contribution& c : r.branch_currents) contribution(studied, c);
       return;
     }
     text += bus_fields_[at(r.fault.bus)];
     amount(study_.network().bus(r.fault.bus).nominal_kv);
     text += ',';
     text += fault_name(r.fault.kind);
-    amount(r.current_ka);
-    optional(r.x_over_r);
-    optional(r.peak_ka);
+    text += ',';
+    text += case_kind_name(studied.case_kind);
+    if (studied.iec60909 != nullptr) {
+      iec60909_columns(*studied.iec60909);
+    } else {
+      amount(r.current_ka);
+      optional(r.x_over_r);
+      optional(r.peak_ka);
+    }
     amount(std::abs(r.earth_current_ka));
     phasors(r.sequence_ka);
     impedance(r.z1_ohm);
@@ -51,10 +58,28 @@ class CsvPiece : public ReportPiece {
   std::string text;
 
  private:
-  void contribution(const FaultResult& r, const Contribution& c) {
+  void iec60909_columns(const iec60909::Quantities& q) {
+    amount(q.c);
+    amount(q.ikss_ka);
+    amount(q.skss_mva);
+    for (const auto& value : {q.r_over_x, q.kappa, q.ip_ka, q.ib_ka, q.idc_ka, q.ib_asymmetric_ka, q.ik_ka,
+                              q.m, q.n, q.ith_ka, q.i2t_ka2s})
+      optional(value);
+    amount(q.converter_ka);
+    optional(q.motor_share_percent);
+    text += ',';
+    std::string missing;
+    for (const auto& one : q.not_evaluated)
+      missing += (missing.empty() ? "" : "; ") + one.quantity + ": " + one.why;
+    text += csv_field(missing);
+  }
+  void contribution(const StudiedFault& studied, const Contribution& c) {
+    const FaultResult& r = studied.result;
     text += bus_fields_[at(r.fault.bus)];
     text += ',';
     text += fault_name(r.fault.kind);
+    text += ',';
+    text += case_kind_name(studied.case_kind);
     text += ',';
     text += csv_field(element(study_.network(), c.element).id);
     text += ',';
@@ -93,20 +118,24 @@ class CsvPiece : public ReportPiece {
 
 class CsvReport : public FaultReport {
  public:
-  CsvReport(const Study& study, CsvTable table, Sink sink)
-      : study_(study), table_(table), sink_(std::move(sink)) {
-    for (const Bus& bus : study.network().buses) bus_fields_.push_back(csv_field(bus.id));
+  CsvReport(const Studies& studies, CsvTable table, Sink sink)
+      : study_(*studies.front()), table_(table), sink_(std::move(sink)) {
+    for (const Bus& bus : study_.network().buses) bus_fields_.push_back(csv_field(bus.id));
   }
 
   void begin() override {
     if (table_ == CsvTable::faults)
-      sink_(
-          "bus,nominal_kv,fault,current_ka,x_over_r,peak_ka,earth_current_ka,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,"
-          "ic_deg,"
-          "i0_ka,i0_deg,i1_ka,i1_deg,i2_ka,i2_deg,r1_ohm,x1_ohm,r2_ohm,x2_ohm,r0_ohm,x0_ohm\r\n");
+      sink_(std::string("bus,nominal_kv,fault,case_kind,") +
+            (study_.iec60909() == nullptr
+                 ? "current_ka,x_over_r,peak_ka"
+                 : "c,ikss_ka,skss_mva,r_over_x,kappa,ip_ka,ib_ka,idc_ka,ib_asymmetric_ka,ik_ka,m,n,ith_ka,"
+                   "i2t_ka2s,converter_ka,motor_share_percent,not_evaluated") +
+            ",earth_current_ka,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_deg,i2_ka,i2_deg,"
+            "r1_ohm,x1_ohm,r2_ohm,x2_ohm,r0_ohm,x0_ohm\r\n");
     else
       sink_(
-          "bus,fault,element,at_bus,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_deg,i2_ka,"
+          "bus,fault,case_kind,element,at_bus,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_"
+          "deg,i2_ka,"
           "i2_deg\r\n");
   }
   std::unique_ptr<ReportPiece> make_piece() const override {
@@ -128,8 +157,8 @@ class CsvReport : public FaultReport {
 
 }  // namespace
 
-std::unique_ptr<FaultReport> csv_report(const Study& study, CsvTable table, Sink sink) {
-  return std::make_unique<CsvReport>(study, table, std::move(sink));
+std::unique_ptr<FaultReport> csv_report(const Studies& studies, CsvTable table, Sink sink) {
+  return std::make_unique<CsvReport>(studies, table, std::move(sink));
 }
 
 }  // namespace kiloamp

@@ -5,6 +5,7 @@
 #include <string>
 
 #include "engine/study/cross_check.hpp"
+#include "reports/study_words.hpp"
 
 namespace kiloamp {
 
@@ -19,13 +20,15 @@ struct ReportFacts {
   std::size_t remarks = 0;     ///< remarks on the data that `check` would show
   bool contributions = false;  ///< text: a table of contributions for every fault
   bool surroundings = false;   ///< text: voltages, branch and neutral currents too
+  bool peaks = true;           ///< the study computes peak currents
+  bool intermediate = false;   ///< JSON: correction factors, corrected impedances, machines near each fault
 };
 
 /// What some faults in a row become in a report, written by one thread.
 class ReportPiece {
  public:
   virtual ~ReportPiece() = default;
-  virtual void fault(const FaultResult& result) = 0;
+  virtual void fault(const StudiedFault& fault) = 0;
 };
 
 /// begin, then the pieces in the order of their faults, then end. CSV and JSON pass each piece on at once;
@@ -42,7 +45,7 @@ class FaultReport {
 };
 
 /// Tables of at most 120 columns, with method, state, defaults, warnings and cautions.
-[[nodiscard]] std::unique_ptr<FaultReport> text_report(const Study& study, const ReportFacts& facts,
+[[nodiscard]] std::unique_ptr<FaultReport> text_report(const Studies& studies, const ReportFacts& facts,
                                                        Sink sink);
 
 /// RFC 4180: quotes around a field with a comma, quote or line break; a quote is doubled.
@@ -51,11 +54,11 @@ class FaultReport {
 /// RFC 4180, one header row whose names end in their unit. Currents and impedances with 6 decimals, angles
 /// with 3.
 enum class CsvTable { faults, contributions };
-[[nodiscard]] std::unique_ptr<FaultReport> csv_report(const Study& study, CsvTable table, Sink sink);
+[[nodiscard]] std::unique_ptr<FaultReport> csv_report(const Studies& studies, CsvTable table, Sink sink);
 
 /// One document, format "kiloamp-results", version 1. A quantity without a value is null, never a made-up
 /// number.
-[[nodiscard]] std::unique_ptr<FaultReport> json_report(const Study& study, const ReportFacts& facts,
+[[nodiscard]] std::unique_ptr<FaultReport> json_report(const Studies& studies, const ReportFacts& facts,
                                                        Sink sink);
 
 }  // namespace kiloamp

@@ -28,23 +28,54 @@ void append_pair(std::string& out, Complex z) {
 
 }  // namespace
 
-std::string json_heading(const Study& study, const ReportFacts& facts) {
+std::string json_heading(const Studies& studies, const ReportFacts& facts) {
+  const Study& study = *studies.front();
   const StudyOptions& o = study.options();
+  const bool iec = o.method == Method::iec60909;
   std::string out =
       "{\n\"format\": \"kiloamp-results\", \"version\": 1, \"study\": " + json_text(facts.study) +
-      ", \"method\": \"classical\",\n\"case\": {\"title\": " +
-      (study.network().title ? json_text(*study.network().title) : "null") +
+      ", \"method\": \"" + (iec ? "iec60909" : "classical") +
+      "\",\n\"case\": {\"title\": " + (study.network().title ? json_text(*study.network().title) : "null") +
       ", \"file\": " + json_text(facts.file) + ", \"sha256\": " + json_text(facts.sha256) +
       "},\n\"scenario\": " + (study.scenario_id().empty() ? "null" : json_text(study.scenario_id())) +
-      ", \"case_kind\": \"" + (o.case_kind == CaseKind::max ? "max" : "min") + "\", \"frequency_hz\": ";
+      ", \"case_kind\": \"" + (studies.size() > 1 ? "both" : case_kind_name(o.case_kind)) +
+      "\", \"frequency_hz\": ";
   append_shortest(out, study.network().frequency_hz);
   out += ", \"base_mva\": ";
   append_shortest(out, study.network().base());
-  out += ",\n\"prefault\": " + json_text(prefault_words(study)) + ",\n\"fault_impedance\": {\"phase_ohm\": ";
+  if (iec) {
+    out += std::string(",\n\"iec60909\": {\"edition\": ") +
+           (o.iec60909.edition == iec60909::Edition::e2016 ? "2016" : "2001") + ", \"kappa_method\": \"" +
+           "abc"[static_cast<std::size_t>(o.iec60909.kappa)] + "\", \"tmin_s\": ";
+    append_shortest(out, o.iec60909.tmin_s);
+    out += ", \"duration_s\": ";
+    append_shortest(out, o.iec60909.duration_s);
+    out +=
+        ", \"conductor_temperature\": \"max: 20 degrees C; min: end of the short circuit\", "
+        "\"motor_rules\": [";
+    const auto& rules = study.iec60909()->motor_rules();
+    for (std::size_t i = 0; i < rules.size(); ++i) {
+      out += (i > 0 ? ", " : "") + std::string("{\"element\": ") +
+             json_text(element(study.network(), rules[i].place).id) + ", \"value\": ";
+      append_shortest(out, rules[i].value);
+      out += ", \"limit\": ";
+      append_shortest(out, rules[i].limit);
+      out +=
+          std::string(", \"would_allow_neglecting\": ") + (rules[i].would_allow() ? "true" : "false") + "}";
+    }
+    out += "]}";
+  }
+  for (const Study* s : studies) {
+    out +=
+        std::string(",\n\"prefault") + (s == &study ? "" : "_min") + "\": " + json_text(prefault_words(*s));
+  }
+  out += ",\n\"fault_impedance\": {\"phase_ohm\": ";
   append_pair(out, o.phase_ohm);
   out += ", \"earth_ohm\": ";
   append_pair(out, o.earth_ohm);
-  out += "},\n\"peak\": " + json_text(kPeakFormula) + ",\n\"defaults_used\": [";
+  out += "}";
+  if (facts.peaks) out += ",\n\"peak\": " + json_text(peak_words(o));
+  out += ",\n\"defaults_used\": [";
   const char* gap = "\n";
   for (const DefaultUse& use : study.defaults_used()) {
     out += gap + std::string(" {\"field\": ") + json_text(use.field) +
@@ -56,11 +87,36 @@ std::string json_heading(const Study& study, const ReportFacts& facts) {
     gap = ",\n";
   }
   out += "],\n\"warnings\": ";
-  append_list(out, study.warnings());
+  append_list(out, warnings_of(studies));
   out += ",\n\"cautions\": ";
   append_list(out, cautions());
   out += ",\n";
   return out;
+}
+
+std::string json_corrections(const Studies& studies) {
+  std::string out = "\"corrections\": [";
+  const char* gap = "\n";
+  for (const Study* study : studies) {
+    const Network& n = study->network();
+    for (const iec60909::Correction& c : study->corrections()) {
+      out += gap + std::string(" {\"case_kind\": \"") + case_kind_name(study->options().case_kind) +
+             "\", \"element\": " + json_text(element(n, c.element).id) + ", \"factor\": " + json_text(c.name);
+      if (c.element.kind == ElementKind::three_winding_transformer) {
+        static constexpr const char* kPairs[] = {"hv_mv", "hv_lv", "mv_lv"};
+        out += std::string(", \"pair\": \"") + kPairs[c.part] + "\"";
+      }
+      out += ", \"value\": ";
+      append_shortest(out, c.factor);
+      if (const auto z = iec60909::corrected_ohm(n, c)) {
+        out += ", \"corrected_ohm\": ";
+        append_pair(out, *z);
+      }
+      out += "}";
+      gap = ",\n";
+    }
+  }
+  return out + "],\n";
 }
 
 }  // namespace kiloamp

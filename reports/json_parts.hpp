@@ -10,6 +10,10 @@ namespace kiloamp {
 [[nodiscard]] std::string json_text(const std::string& text);
 /// From the opening brace to the cautions: what was studied, how, and with which assumptions. Ends ready for
 /// the study's own members.
-[[nodiscard]] std::string json_heading(const Study& study, const ReportFacts& facts);
+[[nodiscard]] std::string json_heading(const Studies& studies, const ReportFacts& facts);
+
+/// "corrections": what the method changed on which element, with the impedance that came out [r, x]; ends
+/// ready for the next member.
+[[nodiscard]] std::string json_corrections(const Studies& studies);
 
 }  // namespace kiloamp

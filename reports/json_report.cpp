@@ -9,17 +9,20 @@ namespace {
 
 class JsonPiece : public ReportPiece {
  public:
-  explicit JsonPiece(const Study& study) : study_(study) {}
+  JsonPiece(const Study& study, bool intermediate) : study_(study), intermediate_(intermediate) {}
 
-  void fault(const FaultResult& r) override {
+  void fault(const StudiedFault& studied) override {
+    const FaultResult& r = studied.result;
+    const iec60909::Quantities* iec = studied.iec60909;
     if (!text.empty()) text += ",\n";
     text += "{\"bus\": " + bus(r.fault.bus) + ", \"fault\": \"" + fault_name(r.fault.kind) +
-            "\", \"current_ka\": ";
-    append_shortest(text, r.current_ka);
+            "\", \"case_kind\": \"" + case_kind_name(studied.case_kind) + "\", \"current_ka\": ";
+    append_shortest(text, iec != nullptr ? iec->ikss_ka : r.current_ka);
     text += ", \"x_over_r\": ";
     optional(r.x_over_r);
     text += ", \"peak_ka\": ";
-    optional(r.peak_ka);
+    optional(iec != nullptr ? iec->ip_ka : r.peak_ka);
+    if (iec != nullptr) iec60909_members(*iec, studied.inside_unit);
     text += ", \"prefault_kv\": ";
     append_shortest(text, r.prefault_kv);
     phasors(r.sequence_ka);
@@ -53,6 +56,49 @@ class JsonPiece : public ReportPiece {
   std::string text;
 
  private:
+  void member(const char* name, const std::optional<double>& value) {
+    text += std::string(", \"") + name + "\": ";
+    optional(value);
+  }
+  void iec60909_members(const iec60909::Quantities& q, bool inside_unit) {
+    text += ", \"iec60909\": {\"c\": ";
+    append_shortest(text, q.c);
+    member("ikss_ka", q.ikss_ka);
+    member("skss_mva", q.skss_mva);
+    member("r_over_x", q.r_over_x);
+    member("kappa", q.kappa);
+    member("ip_ka", q.ip_ka);
+    member("ib_ka", q.ib_ka);
+    member("idc_ka", q.idc_ka);
+    member("ib_asymmetric_ka", q.ib_asymmetric_ka);
+    member("ik_ka", q.ik_ka);
+    member("m", q.m);
+    member("n", q.n);
+    member("ith_ka", q.ith_ka);
+    member("i2t_ka2s", q.i2t_ka2s);
+    member("converter_ka", q.converter_ka);
+    member("motor_share_percent", q.motor_share_percent);
+    if (inside_unit) text += ", \"inside_power_station_unit\": true";
+    text += ", \"not_evaluated\": [";
+    for (std::size_t i = 0; i < q.not_evaluated.size(); ++i)
+      text += (i > 0 ? ", " : "") + std::string("{\"quantity\": ") + json_text(q.not_evaluated[i].quantity) +
+              ", \"why\": " + json_text(q.not_evaluated[i].why) + "}";
+    text += ']';
+    if (intermediate_ && !q.machines.empty()) {
+      text += ", \"machines\": [";
+      for (std::size_t i = 0; i < q.machines.size(); ++i) {
+        const iec60909::MachinePart& m = q.machines[i];
+        text += (i > 0 ? ", " : "") + std::string("{\"element\": ") + id(m.element);
+        member("ikss_ka", m.ikss_ka);
+        member("ikss_over_ir", m.ratio);
+        member("mu", m.mu);
+        if (m.q) member("q", m.q);
+        text += '}';
+      }
+      text += ']';
+    }
+    text += '}';
+  }
   std::string id(ElementRef ref) const { return json_text(element(study_.network(), ref).id); }
   std::string bus(BusIndex b) const { return json_text(study_.network().bus(b).id); }
   void optional(const std::optional<double>& value) {
@@ -102,15 +148,22 @@ class JsonPiece : public ReportPiece {
   }
 
   const Study& study_;
+  bool intermediate_;
 };
 
 class JsonReport : public FaultReport {
  public:
-  JsonReport(const Study& study, ReportFacts facts, Sink sink)
-      : study_(study), facts_(std::move(facts)), sink_(std::move(sink)) {}
+  JsonReport(const Studies& studies, ReportFacts facts, Sink sink)
+      : studies_(studies), study_(*studies.front()), facts_(std::move(facts)), sink_(std::move(sink)) {}
 
-  void begin() override { sink_(json_heading(study_, facts_) + "\"faults\": ["); }
-  std::unique_ptr<ReportPiece> make_piece() const override { return std::make_unique<JsonPiece>(study_); }
+  void begin() override {
+    sink_(json_heading(studies_, facts_));
+    if (facts_.intermediate) sink_(json_corrections(studies_));
+    sink_("\"faults\": [");
+  }
+  std::unique_ptr<ReportPiece> make_piece() const override {
+    return std::make_unique<JsonPiece>(study_, facts_.intermediate);
+  }
   void add(ReportPiece& piece) override {
     std::string& text = static_cast<JsonPiece&>(piece).text;
     if (text.empty()) return;
@@ -133,6 +186,7 @@ class JsonReport : public FaultReport {
   }
 
  private:
+  Studies studies_;
   const Study& study_;
   ReportFacts facts_;
   Sink sink_;
@@ -141,8 +195,8 @@ class JsonReport : public FaultReport {
 
 }  // namespace
 
-std::unique_ptr<FaultReport> json_report(const Study& study, const ReportFacts& facts, Sink sink) {
-  return std::make_unique<JsonReport>(study, facts, std::move(sink));
+std::unique_ptr<FaultReport> json_report(const Studies& studies, const ReportFacts& facts, Sink sink) {
+  return std::make_unique<JsonReport>(studies, facts, std::move(sink));
 }
 
 }  // namespace kiloamp

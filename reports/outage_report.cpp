@@ -24,7 +24,7 @@ std::string some_buses(const Study& study, const std::vector<BusIndex>& buses) {
 }
 
 void write_text(const Study& study, const OutageTable& table, const ReportFacts& facts, const Sink& sink) {
-  sink(heading_block(study, facts));
+  sink(heading_block({&study}, facts));
   sink(paragraph("outages      ",
                  std::to_string(table.outages) +
                      " elements, each out alone; currents by change of low rank, no new factorisation") +
@@ -88,7 +88,7 @@ void write_csv(const Study& study, const OutageTable& table, const Sink& sink) {
 
 void write_json(const Study& study, const OutageTable& table, const ReportFacts& facts, const Sink& sink) {
   std::string out =
-      json_heading(study, facts) + "\"outages\": " + std::to_string(table.outages) + ",\n\"buses\": [";
+      json_heading({&study}, facts) + "\"outages\": " + std::to_string(table.outages) + ",\n\"buses\": [";
   const char* gap = "\n";
   for (const OutageRow& row : table.rows) {
     out += gap + std::string("{\"bus\": ") + json_text(bus_id(study, row.bus)) + ", \"fault\": \"" +

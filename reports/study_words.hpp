@@ -6,12 +6,19 @@
 
 namespace kiloamp {
 
+/// One study, or the same case once for the largest and once for the smallest currents; never empty.
+using Studies = std::vector<const Study*>;
+
+[[nodiscard]] std::string method_words(const StudyOptions& options);
+/// "max" or "min".
+[[nodiscard]] const char* case_kind_name(CaseKind kind);
 [[nodiscard]] std::string case_kind_words(const StudyOptions& options);
+/// Warnings of all studies; one that not every study has says whose it is.
+[[nodiscard]] std::vector<std::string> warnings_of(const Studies& studies);
+/// How the peak is found, for the method at hand.
+[[nodiscard]] std::string peak_words(const StudyOptions& options);
 [[nodiscard]] std::string prefault_words(const Study& study);
 [[nodiscard]] std::string fault_impedance_words(const StudyOptions& options);
-inline constexpr const char* kPeakFormula =
-    "kappa sqrt(2) I with kappa = 1.02 + 0.98 exp(-3 R/X) (IEC 60909-0, 8.1), R/X of the loop impedance of "
-    "the fault";
 /// "3ph", "LG", "LL", "LLG".
 [[nodiscard]] const char* fault_short_name(FaultKind kind);
 /// "three-phase", "line to ground on phase a", ...

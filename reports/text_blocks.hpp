@@ -8,8 +8,8 @@ namespace kiloamp {
 
 /// `text` broken at spaces to kTextWidth; the first line begins with `first`, the others are indented as far.
 [[nodiscard]] std::string paragraph(const std::string& first, const std::string& text);
-/// Case, state, prefault voltage, fault impedance, peak formula, defaults, warnings.
-[[nodiscard]] std::string heading_block(const Study& study, const ReportFacts& facts);
+/// Case, state, prefault voltage, fault impedance, peak formula where there are peaks, defaults, warnings.
+[[nodiscard]] std::string heading_block(const Studies& studies, const ReportFacts& facts);
 [[nodiscard]] std::string defaults_block(const Network& network, const std::vector<DefaultUse>& defaults);
 [[nodiscard]] std::string cautions_block();
 

@@ -1,5 +1,6 @@
 #include <algorithm>
 #include <cmath>
+#include <map>
 
 #include "reports/number_text.hpp"
 #include "reports/study_words.hpp"
@@ -38,33 +39,50 @@ void add_phases(std::vector<std::string>& cells, const BySequence<Complex>& sequ
 
 class TextPiece : public ReportPiece {
  public:
-  TextPiece(const Study& study, const ReportFacts& facts) : study_(study), facts_(facts) {}
+  TextPiece(const Studies& studies, const ReportFacts& facts)
+      : study_(*studies.front()), facts_(facts), several_(studies.size() > 1) {}
 
-  void fault(const FaultResult& r) override {
+  void fault(const StudiedFault& studied) override {
+    const FaultResult& r = studied.result;
     const bool again = last_ && *last_ == r.fault.bus;
     last_ = r.fault.bus;
     const Bus& bus = study_.network().bus(r.fault.bus);
     std::vector<std::string> cells{again ? "" : bus.id, again ? "" : readable(bus.nominal_kv),
                                    fault_short_name(r.fault.kind)};
-    cells.push_back(readable(r.current_ka));
-    cells.push_back(r.current_ka == 0 ? "-" : or_dash(r.x_over_r));
-    cells.push_back(or_dash(r.peak_ka));
-    cells.push_back(readable(std::abs(r.earth_current_ka)));
-    for (const auto& z : {r.z1_ohm, r.z0_ohm}) {
-      cells.push_back(z ? readable(z->real()) : "-");
-      cells.push_back(z ? readable(z->imag()) : "-");
+    if (several_) cells.emplace_back(case_kind_name(studied.case_kind));
+    if (studied.iec60909 != nullptr) {
+      const iec60909::Quantities& q = *studied.iec60909;
+      cells.push_back(readable(q.ikss_ka));
+      for (const auto& value : {q.ip_ka, q.ib_ka, q.ik_ka, q.ith_ka, q.r_over_x, q.kappa})
+        cells.push_back(or_dash(value));
+      for (const auto& one : q.not_evaluated) ++not_evaluated[one.quantity + ": " + one.why];
+    } else {
+      cells.push_back(readable(r.current_ka));
+      cells.push_back(r.current_ka == 0 ? "-" : or_dash(r.x_over_r));
+      cells.push_back(or_dash(r.peak_ka));
     }
+    cells.push_back(readable(std::abs(r.earth_current_ka)));
+    if (studied.iec60909 == nullptr)
+      for (const auto& z : {r.z1_ohm, r.z0_ohm}) {
+        cells.push_back(z ? readable(z->real()) : "-");
+        cells.push_back(z ? readable(z->imag()) : "-");
+      }
     rows.push_back(std::move(cells));
-    if (facts_.contributions) details += detail(r);
+    if (facts_.contributions) details += detail(studied);
   }
 
+  std::map<std::string, std::size_t> not_evaluated;  ///< quantity and reason: how often
   std::vector<std::vector<std::string>> rows;
   std::string details;
 
  private:
-  std::string detail(const FaultResult& r) {
-    std::string out = "\n" + study_.network().bus(r.fault.bus).id + ", " + fault_words(r.fault.kind) + ": " +
+  std::string detail(const StudiedFault& studied) {
+    const FaultResult& r = studied.result;
+    std::string out = "\n" + study_.network().bus(r.fault.bus).id + ", " + fault_words(r.fault.kind) +
+                      (several_ ? std::string(", ") + case_kind_name(studied.case_kind) : "") + ": " +
                       readable(r.current_ka) + " kA\n";
+    if (studied.inside_unit) out += "  inside a power station unit: factors K_G,S and K_T,S\n";
+    if (studied.iec60909 != nullptr && r.has_source) out += quantities(*studied.iec60909);
     if (!r.has_source) return out + "  no source reaches this bus\n";
     out += currents("current from the element into the bus", r.contributions, &r);
     if (!facts_.surroundings) return out;
@@ -96,6 +114,25 @@ class TextPiece : public ReportPiece {
     return out;
   }
 
+  static std::string quantities(const iec60909::Quantities& q) {
+    std::string text = "c " + readable(q.c) + ", S\"k " + readable(q.skss_mva) + " MVA";
+    const auto add = [&](const char* name, const std::optional<double>& value, const char* unit) {
+      if (value) text += std::string(", ") + name + " " + readable(*value) + unit;
+    };
+    add("i_dc at tmin", q.idc_ka, " kA");
+    add("asymmetric Ib", q.ib_asymmetric_ka, " kA");
+    add("m", q.m, "");
+    add("n", q.n, "");
+    add("I2t", q.i2t_ka2s, " kA2s");
+    if (q.converter_ka > 0) add("of it converters", q.converter_ka, " kA");
+    if (q.motor_share_percent && *q.motor_share_percent > 0.05)
+      text +=
+          ", motors add " + readable(*q.motor_share_percent) + " % (" +
+          (*q.motor_share_percent <= 5 ? "the 5 % rule would allow to neglect them" : "not to be neglected") +
+          ")";
+    return paragraph("  ", text);
+  }
+
   // With `fault` given: shares of its current, measured along it in the phase that carries it.
   std::string currents(const char* title, const std::vector<Contribution>& list, const FaultResult* fault) {
     TextTable table;
@@ -123,16 +160,26 @@ class TextPiece : public ReportPiece {
 
   const Study& study_;
   const ReportFacts& facts_;
+  bool several_;
   std::optional<BusIndex> last_;
 };
 
 class TextReport : public FaultReport {
  public:
-  TextReport(const Study& study, ReportFacts facts, Sink sink)
-      : study_(study), facts_(std::move(facts)), sink_(std::move(sink)) {
+  TextReport(const Studies& studies, ReportFacts facts, Sink sink)
+      : studies_(studies), study_(*studies.front()), facts_(std::move(facts)), sink_(std::move(sink)) {
     table_.column("bus", "", Align::left);
     table_.column("nominal", "kV", Align::decimal);
     table_.column("fault", "", Align::left);
+    if (studies.size() > 1) table_.column("case", "", Align::left);
+    if (study_.iec60909() != nullptr) {
+      for (const char* current : {"I\"k", "ip", "Ib", "Ik", "Ith"})
+        table_.column(current, "kA", Align::decimal);
+      table_.column("R/X", "", Align::decimal);
+      table_.column("kappa", "", Align::decimal);
+      table_.column("earth", "kA", Align::decimal);
+      return;
+    }
     table_.column("current", "kA", Align::decimal);
     table_.column("X/R", "", Align::decimal);
     table_.column("peak", "kA", Align::decimal);
@@ -140,23 +187,35 @@ class TextReport : public FaultReport {
     for (const char* z : {"R1", "X1", "R0", "X0"}) table_.column(z, "ohm", Align::decimal);
   }
 
-  void begin() override { sink_(heading_block(study_, facts_) + "\n"); }
+  void begin() override { sink_(heading_block(studies_, facts_) + "\n"); }
   std::unique_ptr<ReportPiece> make_piece() const override {
-    return std::make_unique<TextPiece>(study_, facts_);
+    return std::make_unique<TextPiece>(studies_, facts_);
   }
   void add(ReportPiece& piece) override {
     auto& from = static_cast<TextPiece&>(piece);
     for (auto& row : from.rows) table_.row(std::move(row));
     details_ += from.details;
+    for (const auto& [what, count] : from.not_evaluated) not_evaluated_[what] += count;
+    from.not_evaluated.clear();
     from.rows.clear();
     from.details.clear();
   }
 
   void end(const CrossCheck* check) override {
     sink_(table_.text());
-    sink_(
-        "\ncurrent: largest phase current, rms. earth: 3 I0. R1, X1, R0, X0: Thevenin impedances; - : no "
-        "path, or no value.\n");
+    if (study_.iec60909() == nullptr)
+      sink_(
+          "\ncurrent: largest phase current, rms. earth: 3 I0. R1, X1, R0, X0: Thevenin impedances; - : no "
+          "path, or no value.\n");
+    else
+      sink_("\n" +
+            paragraph("",
+                      "I\"k: initial, largest phase. ip: peak. Ib: symmetrical breaking at tmin. Ik: "
+                      "steady state. Ith: thermal equivalent over Tk. earth: 3 I0. - : not evaluated, or "
+                      "no current."));
+    for (const auto& [what, count] : not_evaluated_)
+      sink_(paragraph("not evaluated  ",
+                      what + " (" + std::to_string(count) + (count == 1 ? " fault)" : " faults)")));
     if (table_.was_shortened())
       sink_("Long names are shortened in the middle (…); CSV and JSON carry them whole.\n");
     sink_(details_);
@@ -175,11 +234,13 @@ class TextReport : public FaultReport {
   }
 
  private:
+  Studies studies_;
   const Study& study_;
   ReportFacts facts_;
   Sink sink_;
   TextTable table_;
   std::string details_;
+  std::map<std::string, std::size_t> not_evaluated_;
 };
 
 }  // namespace
@@ -222,28 +283,51 @@ std::string defaults_block(const Network& network, const std::vector<DefaultUse>
   return out;
 }
 
-std::string heading_block(const Study& study, const ReportFacts& facts) {
+std::string heading_block(const Studies& studies, const ReportFacts& facts) {
+  const Study& study = *studies.front();
+  const StudyOptions& options = study.options();
   const Network& n = study.network();
   std::string out =
-      "kiloamp " + facts.study +
-      ": prospective short-circuit currents, classical method (voltage behind impedance, no load currents)\n";
+      "kiloamp " + facts.study + ": prospective short-circuit currents, " + method_words(options) + "\n";
   out += paragraph("case         ", n.title.value_or("untitled") + " (" + facts.file + ", sha256 " +
                                         facts.sha256.substr(0, 12) + ")");
   out += paragraph(
       "state        ",
       (study.scenario_id().empty() ? std::string("as written") : "scenario \"" + study.scenario_id() + "\"") +
           ", " + fixed(n.frequency_hz, 0) + " Hz");
-  out += paragraph("case kind    ", case_kind_words(study.options()));
-  out += paragraph("prefault     ", prefault_words(study));
-  out += paragraph("impedance    ", fault_impedance_words(study.options()));
+  const char* label = "case kind    ";
+  for (const Study* one : studies) {
+    out += paragraph(label, case_kind_words(one->options()));
+    label = "             ";
+  }
+  label = "prefault     ";
+  for (const Study* one : studies) {
+    out += paragraph(
+        label, (studies.size() > 1 ? case_kind_name(one->options().case_kind) + std::string(": ") : "") +
+                   prefault_words(*one));
+    label = "             ";
+  }
+  out += paragraph("impedance    ", fault_impedance_words(options));
   out += paragraph("left out     ",
-                   study.options().include_shunts
+                   options.include_shunts
                        ? "nothing: line charging and shunts are in all three sequences"
                        : "line charging and shunts in positive and negative sequence; static load");
-  out += paragraph("peak         ", kPeakFormula);
+  if (facts.peaks) out += paragraph("peak         ", peak_words(options));
+  if (const auto* evaluation = study.iec60909()) {
+    if (facts.peaks)
+      out += paragraph("times        ", "tmin " + readable(options.iec60909.tmin_s) + " s for Ib, Tk " +
+                                            readable(options.iec60909.duration_s) + " s for Ith");
+    std::size_t allowed = 0;
+    for (const auto& rule : evaluation->motor_rules()) allowed += rule.would_allow() ? 1 : 0;
+    if (!evaluation->motor_rules().empty())
+      out += paragraph("motors       ",
+                       "all taken; rules that would allow to neglect them (6.10): fulfilled at " +
+                           std::to_string(allowed) + " of " +
+                           std::to_string(evaluation->motor_rules().size()) + " places (JSON lists them)");
+  }
   out += defaults_block(n, study.defaults_used());
-  const char* label = "warnings     ";
-  for (const std::string& warning : study.warnings()) {
+  label = "warnings     ";
+  for (const std::string& warning : warnings_of(studies)) {
     out += paragraph(label, warning);
     label = "             ";
   }
@@ -264,8 +348,8 @@ std::string cautions_block() {
   return out;
 }
 
-std::unique_ptr<FaultReport> text_report(const Study& study, const ReportFacts& facts, Sink sink) {
-  return std::make_unique<TextReport>(study, facts, std::move(sink));
+std::unique_ptr<FaultReport> text_report(const Studies& studies, const ReportFacts& facts, Sink sink) {
+  return std::make_unique<TextReport>(studies, facts, std::move(sink));
 }
 
 }  // namespace kiloamp

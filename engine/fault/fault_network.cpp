@@ -49,9 +49,7 @@ void FaultNetwork::assemble(int threads) {
   for (const auto& e : edges_) ++edge_start_[static_cast<std::size_t>(e.i) + 1];
   std::partial_sum(edge_start_.begin(), edge_start_.end(), edge_start_.begin());
 
-  sparse::Values<Complex, 3> values;
-  values.diagonal.resize(n);
-  values.off_diagonal.resize(edges_.size());
+  sparse::Values<Complex, 3> values = empty_values();
   for (const Block& block : m.blocks) {
     for (std::uint32_t p = 0; p < block.count; ++p) {
       for (std::uint32_t q = 0; q < block.count; ++q) {
@@ -75,9 +73,42 @@ void FaultNetwork::assemble(int threads) {
       if (pinned[static_cast<std::size_t>(edges_[e].i)] || pinned[static_cast<std::size_t>(edges_[e].j)])
         values.off_diagonal[e][s] = 0.0;
   }
-  auto analysis = std::make_shared<const sparse::Analysis>(static_cast<sparse::Index>(n), edges_);
-  factors_ = std::make_unique<sparse::Factorisation<Complex, 3>>(std::move(analysis), values, threads);
+  analysis_ = std::make_shared<const sparse::Analysis>(static_cast<sparse::Index>(n), edges_);
+  factors_ = std::make_unique<sparse::Factorisation<Complex, 3>>(analysis_, values, threads);
   inverse_ = factors_->selected_inverse(threads);
+}
+
+sparse::Values<Complex, 3> FaultNetwork::empty_values() const {
+  sparse::Values<Complex, 3> values;
+  values.diagonal.resize(model_->node_count());
+  values.off_diagonal.resize(edges_.size());
+  return values;
+}
+
+void FaultNetwork::put_positive(const SequenceModel& m, int lane, sparse::Values<Complex, 3>& values) const {
+  const auto s = static_cast<std::size_t>(lane);
+  for (const Block& block : m.blocks) {
+    if (block.coupling) continue;  // zero sequence only
+    for (std::uint32_t p = 0; p < block.count; ++p) {
+      const Node i = m.terminals[m.block_terminals[block.first + p]].node;
+      for (std::uint32_t q = p; q < block.count; ++q) {
+        const Node j = m.terminals[m.block_terminals[block.first + q]].node;
+        const Complex y = m.block_y[block.first_y + p * block.count + q][kPositive];
+        if (i == j)
+          values.diagonal[at(i)][s] += p == q ? y : 2.0 * y;
+        else
+          values.off_diagonal[static_cast<std::size_t>(edge_between(i, j))][s] += y;
+      }
+    }
+  }
+  std::vector<bool> pinned(m.node_count(), false);
+  for (const Node node : m.pinned[kPositive]) {
+    pinned[at(node)] = true;
+    values.diagonal[at(node)][s] = 1.0;
+  }
+  for (std::size_t e = 0; e < edges_.size(); ++e)
+    if (pinned[static_cast<std::size_t>(edges_[e].i)] || pinned[static_cast<std::size_t>(edges_[e].j)])
+      values.off_diagonal[e][s] = 0.0;
 }
 
 std::int32_t FaultNetwork::edge_between(Node a, Node b) const {

@@ -50,6 +50,11 @@ class FaultNetwork {
   [[nodiscard]] const sparse::Factorisation<Complex, 3>& factors() const { return *factors_; }
   /// The element's own block, and the coupled group that the terminal is in.
   [[nodiscard]] const std::array<Slot, 2>& slots(std::uint32_t terminal) const { return slots_[terminal]; }
+  /// Puts the positive sequence of another model with the same buses, switches and branches into one lane of
+  /// `values`, which has this network's pattern (made by empty_values).
+  void put_positive(const SequenceModel& other, int lane, sparse::Values<Complex, 3>& values) const;
+  [[nodiscard]] sparse::Values<Complex, 3> empty_values() const;
+  [[nodiscard]] const std::shared_ptr<const sparse::Analysis>& analysis() const { return analysis_; }
   [[nodiscard]] const SolutionQuality& quality() const { return factors_->accuracy(); }
 
   /// Shares of a fault at `bus`, of all buses at most `depth` branches or closed switches away. Element
@@ -81,6 +86,7 @@ class FaultNetwork {
   std::vector<std::array<Slot, 2>> slots_;   ///< per terminal: its own block, and the coupled group it is in
   std::vector<std::int32_t> group_of_node_;  ///< into groups_, -1: a single bus
   std::vector<SwitchGroup> groups_;
+  std::shared_ptr<const sparse::Analysis> analysis_;
   std::unique_ptr<sparse::Factorisation<Complex, 3>> factors_;
   Inverse inverse_;
 };

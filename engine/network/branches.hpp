@@ -67,6 +67,11 @@ struct Tap {
 /// Core forms; what they decide is the path of zero-sequence flux.
 enum class Core : std::uint8_t { three_limb, five_limb, shell, single_phase_bank };
 
+/// The heaviest load before the fault, at the lower-voltage side.
+struct WorstLoad {
+  double voltage_kv = 0, current_a = 0, power_factor = 1;
+};
+
 /// Two-winding transformer; percentages on rated_mva and on the tapped rated voltages.
 struct Transformer : Element {
   BusIndex hv_bus{}, lv_bus{};
@@ -80,6 +85,7 @@ struct Transformer : Element {
   std::optional<Tap> tap;
   std::optional<bool> on_load_tap_changer;
   std::optional<double> tap_range_percent;
+  std::optional<WorstLoad> worst_load;
   std::optional<Core> core;
 };
 

@@ -200,6 +200,13 @@ void fill_three_winding(Network& network, Defaults& defaults) {
 }
 
 void fill_rest(Network& network, Defaults& defaults) {
+  for (std::uint32_t i = 0; i < network.inverter_sources.size(); ++i) {
+    auto& doubly_fed = network.inverter_sources[i].doubly_fed;
+    if (!doubly_fed || doubly_fed->kappa) continue;
+    doubly_fed->kappa = 1.7;
+    defaults.use("doubly_fed.kappa", "1.7", "IEC 60909-0:2016, 6.8.3 (from memory)",
+                 {ElementKind::inverter_source, i});
+  }
   for (std::uint32_t i = 0; i < network.earthing_transformers.size(); ++i) {
     EarthingTransformer& e = network.earthing_transformers[i];
     if (e.neutral) continue;

@@ -14,8 +14,15 @@ Complex from_magnitude(double z, double x_over_r) { return std::polar(z, std::at
 
 }  // namespace
 
+Complex doubly_fed_impedance_ohm(double rated_kv, const DoublyFed& machine) {
+  const double z =
+      std::sqrt(2.0) * machine.kappa.value_or(1.7) * rated_kv / (std::sqrt(3.0) * machine.peak_ka);
+  return from_magnitude(z, 1 / machine.r_over_x);
+}
+
 std::optional<SequenceImpedances> feeder_impedance_ohm(const FeederLevel& level, double nominal_kv) {
   SequenceImpedances z;
+  const double c = level.voltage_factor.value_or(1.0);
   if (level.is_outright()) {
     z[kPositive] = Complex(level.r1_ohm.value_or(0), *level.x1_ohm);
     z[kNegative] =
@@ -23,8 +30,8 @@ std::optional<SequenceImpedances> feeder_impedance_ohm(const FeederLevel& level,
     if (level.x0_ohm) z[kZero] = Complex(level.r0_ohm.value_or(0), *level.x0_ohm);
     return z;
   }
-  const double z1_ohm = level.three_phase_ka ? nominal_kv / (std::sqrt(3.0) * *level.three_phase_ka)
-                                             : nominal_kv * nominal_kv / *level.three_phase_mva;
+  const double z1_ohm = c * (level.three_phase_ka ? nominal_kv / (std::sqrt(3.0) * *level.three_phase_ka)
+                                                  : nominal_kv * nominal_kv / *level.three_phase_mva);
   z[kPositive] = from_magnitude(z1_ohm, *level.x_over_r);
   z[kNegative] = *z[kPositive] * level.z2_over_z1.value_or(1.0);
   if (level.x0_over_x1) {
@@ -38,7 +45,7 @@ std::optional<SequenceImpedances> feeder_impedance_ohm(const FeederLevel& level,
                                                : *level.line_to_ground_mva / nominal_kv *
                                                      (single ? std::sqrt(3.0) : 1 / std::sqrt(3.0));
   // |Z12 + m u|^2 = total^2 with u the direction of Z0: m^2 + 2 m Re(Z12 conj u) + |Z12|^2 - total^2 = 0.
-  const double total_ohm = std::sqrt(3.0) * nominal_kv / i1_ka;
+  const double total_ohm = c * std::sqrt(3.0) * nominal_kv / i1_ka;
   const Complex z12 = *z[kPositive] + *z[kNegative];
   const Complex direction = from_magnitude(1.0, level.x0_over_r0.value_or(*level.x_over_r));
   const double half_linear = (z12 * std::conj(direction)).real();

@@ -11,6 +11,7 @@ namespace kiloamp {
 struct Bus : Element {
   double nominal_kv = 0;
   std::optional<double> prefault_pu, prefault_deg;
+  std::optional<double> voltage_tolerance_percent;  ///< of the supply, up to 1 kV: 6 or 10
   std::optional<std::array<double, 2>> position;
   std::optional<std::string> zone;
 };

@@ -102,6 +102,13 @@ void judge_level(Findings& out, ElementRef ref, const std::string& name, const F
 
 void judge_sources(Findings& out) {
   const Network& n = out.network();
+  for (std::uint32_t i = 0; i < n.buses.size(); ++i) {
+    const auto& tolerance = n.buses[i].voltage_tolerance_percent;
+    if (tolerance && *tolerance != 6 && *tolerance != 10 && out.judges({ElementKind::bus, i}))
+      out.error({ElementKind::bus, i}, "voltage_tolerance_percent", number_text(*tolerance),
+                "IEC 60909-0 knows supplies of 6 and of 10 percent",
+                "give the one that is nearer, or leave it out");
+  }
   for (std::uint32_t i = 0; i < n.network_feeders.size(); ++i) {
     const NetworkFeeder& f = n.network_feeders[i];
     const ElementRef ref{ElementKind::network_feeder, i};

@@ -1,5 +1,7 @@
 // Elements that drive a fault current: grid connections, rotating machines, inverters.
 #pragma once
+#include <complex>
+
 #include "engine/network/identifiers.hpp"
 
 namespace kiloamp {
@@ -19,6 +21,9 @@ struct FeederLevel {
   std::optional<EarthFaultMvaBasis> line_to_ground_mva_basis;
   std::optional<double> x0_over_x1, r0_over_x0;
   std::optional<double> z2_over_z1;
+  /// The voltage, in per unit of nominal, that the levels were computed with (1 when not given; IEC 60909-0
+  /// studies then take their own c).
+  std::optional<double> voltage_factor;
   std::optional<double> r1_ohm, x1_ohm, r2_ohm, x2_ohm, r0_ohm, x0_ohm;
 
   [[nodiscard]] bool is_outright() const { return x1_ohm.has_value(); }
@@ -51,7 +56,8 @@ struct SynchronousMachine : Element {
   std::optional<double> td_subtransient_s, td_transient_s, ta_s;
   std::optional<Rotor> rotor;
   std::optional<Excitation> excitation;
-  std::optional<double> voltage_range_percent;
+  std::optional<double> voltage_range_percent;   ///< how far the generator voltage lies above rated for good
+  std::optional<double> lambda_max, lambda_min;  ///< steady-state short-circuit current over rated current
 };
 
 /// `count` identical asynchronous motors, or a group given by its sum. The size is said in exactly one of
@@ -75,14 +81,26 @@ struct InductionMotor : Element {
 
 enum class NegativeSequence : std::uint8_t { none, impedance };
 
-/// Full-converter source (photovoltaic, battery, wind, uninterruptible supply).
+/// A doubly fed machine: an impedance whose short circuit has the peak that the maker states.
+struct DoublyFed {
+  double peak_ka = 0;           ///< highest instantaneous current for a three-phase fault at the source's bus
+  std::optional<double> kappa;  ///< that the peak contains; 1.7 when unknown
+  double r_over_x = 0;
+};
+
+/// Full-converter source (photovoltaic, battery, wind, uninterruptible supply), or a doubly fed machine.
 struct InverterSource : Element {
   BusIndex bus{};
   double rated_mva = 0, rated_kv = 0;
   std::optional<double> fault_current_ratio, current_angle_deg;
   std::optional<NegativeSequence> negative_sequence;
   std::optional<double> z2_percent, x2_over_r2;
+  std::optional<DoublyFed> doubly_fed;
 };
+
+/// Z = sqrt(2) kappa Ur / (sqrt(3) i_peak), split by r_over_x; the same in positive and negative sequence.
+/// Source: IEC 60909-0:2016, 6.8.3 (from memory).
+[[nodiscard]] std::complex<double> doubly_fed_impedance_ohm(double rated_kv, const DoublyFed& machine);
 
 /// A generator and its unit transformer, which IEC 60909-0 corrects as one.
 struct PowerStationUnit : Element {

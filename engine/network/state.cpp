@@ -20,6 +20,7 @@ void apply_case_kind(Network& network, CaseKind kind) {
     if (line.r0_ohm_per_km) *line.r0_ohm_per_km *= hot;
   }
   for (InductionMotor& motor : network.induction_motors) motor.in_service = false;
+  for (InverterSource& source : network.inverter_sources) source.in_service = false;
 }
 
 }  // namespace kiloamp

@@ -125,6 +125,15 @@ std::vector<ShuntElement> shunt_elements(const Network& n, bool include_shunts) 
     if (live(n, n.induction_motors[i], {n.induction_motors[i].bus}) &&
         n.induction_motors[i].drives_fault_current())
       all.push_back(motor(n, i));
+  for (std::uint32_t i = 0; i < n.inverter_sources.size(); ++i) {
+    const InverterSource& source = n.inverter_sources[i];
+    if (!live(n, source, {source.bus}) || !source.doubly_fed) continue;
+    const DoublyFed& d = *source.doubly_fed;
+    const double size = std::sqrt(2.0 / 3.0) * d.kappa.value_or(1.7) * source.rated_kv / d.peak_ka;
+    const double x = size / std::sqrt(1 + d.r_over_x * d.r_over_x);
+    const Complex y = 1.0 / Complex(d.r_over_x * x, x);
+    all.push_back({{ElementKind::inverter_source, i}, source.bus, cyclic(0, y, y), false, true});
+  }
   for (std::uint32_t i = 0; i < n.earthing_transformers.size(); ++i) {
     const EarthingTransformer& e = n.earthing_transformers[i];
     const auto star = star_to_earth(e.neutral);

@@ -38,18 +38,6 @@ struct Circuit {
   BySequence<bool> earthed{};
 };
 
-/// What a calculation standard changes on an element's own impedances (not on what stands in its neutral).
-struct Adjustment {
-  double r_factor = 1, x_factor = 1;
-  std::optional<double> r_over_x;  ///< R is replaced by this times X, before the factors
-  bool left_out = false;
-
-  [[nodiscard]] Complex of(Complex z) const {
-    const double r = r_over_x ? *r_over_x * z.imag() : z.real();
-    return {r * r_factor, z.imag() * x_factor};
-  }
-};
-
 /// Shunt circuit 1/Z at one bus; an empty impedance is an open circuit.
 [[nodiscard]] Circuit shunt_circuit(BusIndex bus, const BySequence<std::optional<Complex>>& z_ohm);
 
@@ -58,8 +46,7 @@ struct Adjustment {
 
 /// Z1 = ra + j x"d, Z2 = ra + j x2, Z0 = ra + j x0 + 3 Zn, or open zero sequence when the neutral is. Source:
 /// definition.
-[[nodiscard]] BySequence<std::optional<Complex>> machine_impedance_ohm(const SynchronousMachine& machine,
-                                                                       const Adjustment& adjustment = {});
+[[nodiscard]] BySequence<std::optional<Complex>> machine_impedance_ohm(const SynchronousMachine& machine);
 
 /// |Z1| = Ur^2 / (Sr LRR), split by r_over_x; Z2 = Z1; zero sequence open. Sr = P / (eta cos phi), all motors
 /// of the group together. Source: IEC 60909-0:2016, 6.10 (from memory). 1 hp = 0.745699872 kW (550 ft lbf/s,
@@ -85,13 +72,11 @@ struct Adjustment {
 /// 3 Zn and goes to its bus. Zero, zigzag: no ampere-turns cross. ZN earthed: Z_k0 + 3 Zn to earth; the other
 /// side, if YN earthed: Z_k/2 + j zm0 + 3 Zn. Source: Grainger & Stevenson, Power System Analysis, 1994, ch.
 /// 11 for the star and delta circuits (from memory); zigzag from the balance of ampere-turns on each limb.
-[[nodiscard]] Circuit transformer_circuit(const Transformer& transformer, const Adjustment& adjustment = {});
+[[nodiscard]] Circuit transformer_circuit(const Transformer& transformer);
 
 /// Three-winding transformer or autotransformer: star of arms Z_A = (Z_AB + Z_AC - Z_BC) / 2 and cyclic in a
 /// common base, the same from z0 for zero sequence. Autotransformer: the common neutral carries 3 (I0_hv +
-/// I0_mv) amperes through Zn. Terminals: hv, mv and, when lv_bus is given, lv. `adjustments` are those of the
-/// pairs hv-mv, hv-lv, mv-lv, applied before the star is formed.
-[[nodiscard]] Circuit three_winding_circuit(const ThreeWindingTransformer& transformer,
-                                            const std::array<Adjustment, 3>& adjustments = {});
+/// I0_mv) amperes through Zn. Terminals: hv, mv and, when lv_bus is given, lv.
+[[nodiscard]] Circuit three_winding_circuit(const ThreeWindingTransformer& transformer);
 
 }  // namespace kiloamp

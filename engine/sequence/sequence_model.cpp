@@ -47,9 +47,6 @@ class Builder {
   void finish_islands();
   void sort_terminals();
 
-  [[nodiscard]] Adjustment adjustment(ElementRef element, int part = 0) const {
-    return options_.adjust ? options_.adjust(element, part) : Adjustment{};
-  }
   void add_block(ElementRef element, const Circuit& circuit);
   void join(const Circuit& circuit);
 
@@ -135,12 +132,7 @@ void Builder::add_block(ElementRef element, const Circuit& c) {
 }
 
 void Builder::add_sources() {
-  const auto add = [&](ElementRef ref, BusIndex bus, BySequence<std::optional<Complex>> z_ohm) {
-    const Adjustment change = adjustment(ref);
-    if (change.left_out) return;
-    if (ref.kind != ElementKind::synchronous_machine)  // a machine's neutral impedance is already in its z0
-      for (auto& z : z_ohm)
-        if (z) z = change.of(*z);
+  const auto add = [&](ElementRef ref, BusIndex bus, const BySequence<std::optional<Complex>>& z_ohm) {
     Circuit circuit = shunt_circuit(bus, z_ohm);
     circuit.neutral_earthed[0] = ref.kind == ElementKind::synchronous_machine && z_ohm[kZero];
     add_block(ref, circuit);
@@ -163,13 +155,18 @@ void Builder::add_sources() {
   for (std::uint32_t i = 0; i < network_.synchronous_machines.size(); ++i) {
     const SynchronousMachine& machine = network_.synchronous_machines[i];
     if (is_live(network_, machine, machine.bus))
-      add({ElementKind::synchronous_machine, i}, machine.bus,
-          machine_impedance_ohm(machine, adjustment({ElementKind::synchronous_machine, i})));
+      add({ElementKind::synchronous_machine, i}, machine.bus, machine_impedance_ohm(machine));
   }
   for (std::uint32_t i = 0; i < network_.induction_motors.size(); ++i) {
     const InductionMotor& motor = network_.induction_motors[i];
     if (is_live(network_, motor, motor.bus) && motor.drives_fault_current())
       add({ElementKind::induction_motor, i}, motor.bus, motor_impedance_ohm(motor));
+  }
+  for (std::uint32_t i = 0; i < network_.inverter_sources.size(); ++i) {
+    const InverterSource& source = network_.inverter_sources[i];
+    if (!is_live(network_, source, source.bus) || !source.doubly_fed) continue;
+    const Complex z = doubly_fed_impedance_ohm(source.rated_kv, *source.doubly_fed);
+    add({ElementKind::inverter_source, i}, source.bus, {std::nullopt, z, z});
   }
 }
 
@@ -284,7 +281,7 @@ void Builder::add_transformers() {
     const Transformer& t = network_.transformers[i];
     if (!is_live(network_, t, t.hv_bus, t.lv_bus)) continue;
     const ElementRef ref{ElementKind::transformer, i};
-    add_block(ref, transformer_circuit(t, adjustment(ref)));
+    add_block(ref, transformer_circuit(t));
     link(t.hv_bus, t.lv_bus, t.vector_group.lower[0].clock, ref);
   }
   for (std::uint32_t i = 0; i < network_.three_winding_transformers.size(); ++i) {
@@ -294,7 +291,7 @@ void Builder::add_transformers() {
     ThreeWindingTransformer t = given;
     if (lv_dead) t.lv_bus.reset();
     const ElementRef ref{ElementKind::three_winding_transformer, i};
-    add_block(ref, three_winding_circuit(t, {adjustment(ref, 0), adjustment(ref, 1), adjustment(ref, 2)}));
+    add_block(ref, three_winding_circuit(t));
     link(t.hv_bus, t.mv_bus, t.vector_group.lower[0].clock, ref);
     if (t.lv_bus) link(t.hv_bus, *t.lv_bus, t.vector_group.lower[1].clock, ref);
   }

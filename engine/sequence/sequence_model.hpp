@@ -1,7 +1,6 @@
 // The three sequence networks of a network in per unit: nodes, blocks of admittances, islands and phase
 // shifts.
 #pragma once
-#include <functional>
 #include <span>
 #include <stdexcept>
 #include <vector>
@@ -61,9 +60,6 @@ struct SequenceOptions {
   /// Keep line charging and shunt banks in positive and negative sequence too. Without it they count in zero
   /// sequence only, as IEC 60909-0 assumes (5.2, from memory).
   bool include_shunts = false;
-  /// Empty: impedances as given. Else asked for every feeder, machine, motor and transformer; `part` is 0, or
-  /// the pair of a three-winding transformer (0 hv-mv, 1 hv-lv, 2 mv-lv).
-  std::function<Adjustment(ElementRef element, int part)> adjust;
 };
 
 /// Data that contradict each other in the state under study; the findings say where.

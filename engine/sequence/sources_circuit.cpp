@@ -29,16 +29,14 @@ std::optional<Complex> triple_neutral_ohm(const std::optional<Neutral>& neutral)
   return 3.0 * Complex(neutral->r_ohm.value_or(0), neutral->x_ohm.value_or(0));
 }
 
-BySequence<std::optional<Complex>> machine_impedance_ohm(const SynchronousMachine& m,
-                                                         const Adjustment& adjustment) {
+BySequence<std::optional<Complex>> machine_impedance_ohm(const SynchronousMachine& m) {
   const double one_percent_ohm = m.rated_kv * m.rated_kv / m.rated_mva / 100;
   const double ra = m.ra_percent ? *m.ra_percent : m.xd_subtransient_percent / *m.x_over_r;
   BySequence<std::optional<Complex>> z;
-  z[kPositive] = adjustment.of(one_percent_ohm * Complex(ra, m.xd_subtransient_percent));
-  z[kNegative] =
-      adjustment.of(one_percent_ohm * Complex(ra, m.x2_percent.value_or(m.xd_subtransient_percent)));
+  z[kPositive] = one_percent_ohm * Complex(ra, m.xd_subtransient_percent);
+  z[kNegative] = one_percent_ohm * Complex(ra, m.x2_percent.value_or(m.xd_subtransient_percent));
   if (const auto neutral = triple_neutral_ohm(m.neutral))
-    z[kZero] = adjustment.of(one_percent_ohm * Complex(ra, m.x0_percent.value_or(0))) + *neutral;
+    z[kZero] = one_percent_ohm * Complex(ra, m.x0_percent.value_or(0)) + *neutral;
   return z;
 }
 

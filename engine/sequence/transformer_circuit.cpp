@@ -97,17 +97,17 @@ struct ZeroSide {
 };
 
 // Zero sequence with a zigzag on at least one side: each side for itself.
-void write_zigzag(const Transformer& t, const Adjustment& adjustment, const std::array<ZeroSide, 2>& sides,
-                  const Star& base, Circuit& circuit) {
+void write_zigzag(const Transformer& t, const std::array<ZeroSide, 2>& sides, const Star& base,
+                  Circuit& circuit) {
   circuit.group[kZero] = {-1, -1, -1};
   for (int i = 0; i < 2; ++i) {
     if (!sides[i].entry) continue;
     Complex z = *sides[i].entry;
     if (is_zigzag(sides[i].winding)) {
-      z += adjustment.of(zero_short_circuit_pu(t));
+      z += (zero_short_circuit_pu(t));
     } else {
       if (!t.zm0_percent) continue;
-      z += adjustment.of(short_circuit_pu(t) / 2.0 + Complex(0, *t.zm0_percent / 100));
+      z += (short_circuit_pu(t) / 2.0 + Complex(0, *t.zm0_percent / 100));
     }
     const double kv = base.winding_kv[i];
     circuit.y_siemens[kZero][i][i] = base.mva / (kv * kv) / z;
@@ -118,7 +118,7 @@ void write_zigzag(const Transformer& t, const Adjustment& adjustment, const std:
 
 }  // namespace
 
-Circuit transformer_circuit(const Transformer& t, const Adjustment& adjustment) {
+Circuit transformer_circuit(const Transformer& t) {
   Circuit circuit;
   circuit.terminals = 2;
   circuit.bus = {t.hv_bus, t.lv_bus, {}};
@@ -126,7 +126,7 @@ Circuit transformer_circuit(const Transformer& t, const Adjustment& adjustment) 
   Star star;
   star.mva = t.rated_mva;
   star.winding_kv = {tapped(t.hv_kv, t.tap, Side::hv), tapped(t.lv_kv, t.tap, Side::lv), 1};
-  const Complex half = adjustment.of(short_circuit_pu(t)) / 2.0;
+  const Complex half = (short_circuit_pu(t)) / 2.0;
   star.arms = {{half, 0}, {half, 1}};
   write_star(star, kPositive, circuit);
   write_star(star, kNegative, circuit);
@@ -136,32 +136,30 @@ Circuit transformer_circuit(const Transformer& t, const Adjustment& adjustment) 
       ZeroSide{lower.winding, entry_pu(lower.winding, t.lv_neutral, t.rated_mva, star.winding_kv[1])}};
   for (int i = 0; i < 2; ++i) circuit.neutral_earthed[i] = sides[i].entry.has_value();
   if (is_zigzag(sides[0].winding) || is_zigzag(sides[1].winding)) {
-    write_zigzag(t, adjustment, sides, star, circuit);
+    write_zigzag(t, sides, star, circuit);
     return circuit;
   }
   star.winding_kv[1] *= zero_sequence_sign(lower);
   circuit.open_kv = star.winding_kv;
   star.arms.clear();
-  const Complex half0 = adjustment.of(zero_short_circuit_pu(t)) / 2.0;
+  const Complex half0 = (zero_short_circuit_pu(t)) / 2.0;
   for (int i = 0; i < 2; ++i) {
     if (sides[i].winding == Winding::delta) star.arms.push_back({half0, -1});
     if (sides[i].entry) star.arms.push_back({half0 + *sides[i].entry, i});
   }
-  if (t.zm0_percent) star.arms.push_back({adjustment.of(Complex(0, *t.zm0_percent / 100)), -1});
+  if (t.zm0_percent) star.arms.push_back({(Complex(0, *t.zm0_percent / 100)), -1});
   write_star(star, kZero, circuit);
   return circuit;
 }
 
 namespace {
 
-std::array<Complex, 3> star_arms(const ThreeWindingTransformer& t,
-                                 const std::array<Adjustment, 3>& adjustments, bool zero) {
+std::array<Complex, 3> star_arms(const ThreeWindingTransformer& t, bool zero) {
   const double mva = t.hv_mv.rated_mva;
-  const auto pair = [&](const WindingPair& p, const Adjustment& adjustment) {
-    return adjustment.of(zero ? zero_short_circuit_pu(p) : short_circuit_pu(p)) * mva / p.rated_mva;
+  const auto pair = [&](const WindingPair& p) {
+    return (zero ? zero_short_circuit_pu(p) : short_circuit_pu(p)) * mva / p.rated_mva;
   };
-  const Complex ab = pair(t.hv_mv, adjustments[0]), ac = pair(t.hv_lv, adjustments[1]),
-                bc = pair(t.mv_lv, adjustments[2]);
+  const Complex ab = pair(t.hv_mv), ac = pair(t.hv_lv), bc = pair(t.mv_lv);
   return {(ab + ac - bc) / 2.0, (ab + bc - ac) / 2.0, (ac + bc - ab) / 2.0};
 }
 
@@ -194,8 +192,7 @@ void apply_common_neutral(const ThreeWindingTransformer& t, Circuit& circuit) {
 
 }  // namespace
 
-Circuit three_winding_circuit(const ThreeWindingTransformer& t,
-                              const std::array<Adjustment, 3>& adjustments) {
+Circuit three_winding_circuit(const ThreeWindingTransformer& t) {
   Circuit circuit;
   circuit.terminals = t.lv_bus ? 3 : 2;
   circuit.bus = {t.hv_bus, t.mv_bus, t.lv_bus.value_or(BusIndex{})};
@@ -203,7 +200,7 @@ Circuit three_winding_circuit(const ThreeWindingTransformer& t,
   star.mva = t.hv_mv.rated_mva;
   star.winding_kv = {tapped(t.hv_kv, t.tap, Side::hv), tapped(t.mv_kv, t.tap, Side::mv),
                      tapped(t.lv_kv, t.tap, Side::lv)};
-  const auto z = star_arms(t, adjustments, false);
+  const auto z = star_arms(t, false);
   for (int i = 0; i < circuit.terminals; ++i) star.arms.push_back({z[i], i});
   write_star(star, kPositive, circuit);
   write_star(star, kNegative, circuit);
@@ -215,7 +212,7 @@ Circuit three_winding_circuit(const ThreeWindingTransformer& t,
   circuit.open_kv = star.winding_kv;
   const std::array<Winding, 3> winding{t.vector_group.hv, mv.winding, lv.winding};
   const std::array<const std::optional<Neutral>*, 3> neutral{&t.hv_neutral, &t.mv_neutral, &t.lv_neutral};
-  const auto z0 = star_arms(t, adjustments, true);
+  const auto z0 = star_arms(t, true);
   star.arms.clear();
   for (int i = 0; i < 3; ++i) {
     const bool shares_neutral = t.is_auto() && i < 2;
@@ -228,7 +225,7 @@ Circuit three_winding_circuit(const ThreeWindingTransformer& t,
     else if (entry && i < circuit.terminals)
       star.arms.push_back({z0[i] + *entry, i});
   }
-  if (t.zm0_percent) star.arms.push_back({adjustments[0].of(Complex(0, *t.zm0_percent / 100)), -1});
+  if (t.zm0_percent) star.arms.push_back({Complex(0, *t.zm0_percent / 100), -1});
   write_star(star, kZero, circuit);
   circuit.neutral_shared = t.is_auto();
   if (t.is_auto()) apply_common_neutral(t, circuit);

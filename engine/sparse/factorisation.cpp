@@ -225,6 +225,11 @@ typename Factorisation<Scalar, Lanes>::Entry Factorisation<Scalar, Lanes>::inver
 }
 
 template <typename Scalar, int Lanes>
+const LaneFactors<Scalar, padded_width(Lanes)>& Factorisation<Scalar, Lanes>::plain_factors() const {
+  return body_->factors;
+}
+
+template <typename Scalar, int Lanes>
 typename Factorisation<Scalar, Lanes>::SparseSolver Factorisation<Scalar, Lanes>::sparse_solver() const {
   return SparseSolver(*this);
 }

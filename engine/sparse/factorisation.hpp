@@ -90,6 +90,9 @@ class Factorisation {
   class SparseSolver;
   [[nodiscard]] SparseSolver sparse_solver() const;
 
+  /// L and D of all lanes; they serve a lane whose accuracy says neither refined nor pivoting.
+  [[nodiscard]] const LaneFactors<Scalar, padded_width(Lanes)>& plain_factors() const;
+
  private:
   struct Body;
   std::unique_ptr<Body> body_;

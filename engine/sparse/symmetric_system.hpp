@@ -5,5 +5,6 @@
 #pragma once
 #include "engine/sparse/analysis.hpp"
 #include "engine/sparse/factorisation.hpp"
+#include "engine/sparse/large_entries.hpp"
 #include "engine/sparse/low_rank_change.hpp"
 #include "engine/sparse/pattern.hpp"

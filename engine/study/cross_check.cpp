@@ -85,8 +85,10 @@ CrossCheck cross_check(const Study& study) {
   const phase::PhaseNetwork network(study.network(), study.options().include_shunts);
   CrossCheck check;
   Comparison comparison(study, check);
-  study.for_each_fault([&](const FaultResult& result) {
-    if (result.has_source) comparison.compare(result, network.solve(wired(result.fault, result.prefault_kv)));
+  study.for_each_fault([&](const StudiedFault& studied) {
+    const FaultResult& result = studied.result;
+    if (result.has_source && !studied.inside_unit)
+      comparison.compare(result, network.solve(wired(result.fault, result.prefault_kv)));
   });
   return check;
 }

@@ -15,6 +15,7 @@ struct CrossCheck {
 };
 inline constexpr double kCrossCheckLimit = 1e-6;
 
+/// Faults inside a power station unit have a network of their own and are not compared.
 /// Solves the study's faults with engine/phase, which shares nothing with the sequence path but the network.
 /// @throws sparse::NumericalError  the phase-coordinate equations cannot be solved
 [[nodiscard]] CrossCheck cross_check(const Study& study);

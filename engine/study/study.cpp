@@ -7,13 +7,18 @@ namespace kiloamp {
 
 namespace {
 
-std::vector<Prefault> prefault_of(const Network& network, const PrefaultChoice& choice) {
+std::vector<Prefault> prefault_of(const Network& network, const StudyOptions& options) {
   std::vector<Prefault> prefault(network.buses.size());
   for (std::size_t b = 0; b < prefault.size(); ++b) {
-    if (const auto* value = std::get_if<PrefaultValue>(&choice)) prefault[b].pu = value->pu;
-    if (!std::holds_alternative<PrefaultAsGiven>(choice)) continue;
-    prefault[b].pu = network.buses[b].prefault_pu.value_or(network.prefault_pu.value_or(1.0));
-    prefault[b].deg = network.buses[b].prefault_deg;
+    const Bus& bus = network.buses[b];
+    if (options.method == Method::iec60909) {
+      prefault[b].pu = iec60909::voltage_factor(bus, options.case_kind, options.iec60909.edition);
+      continue;
+    }
+    if (const auto* value = std::get_if<PrefaultValue>(&options.prefault)) prefault[b].pu = value->pu;
+    if (!std::holds_alternative<PrefaultAsGiven>(options.prefault)) continue;
+    prefault[b].pu = bus.prefault_pu.value_or(network.prefault_pu.value_or(1.0));
+    prefault[b].deg = bus.prefault_deg;
   }
   return prefault;
 }
@@ -30,8 +35,11 @@ std::size_t live_count(const Section& section) {
 
 // Elements that are in the case and that a fault study does not use.
 void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<std::string>& warnings) {
-  if (const auto count = live_count(n.inverter_sources))
-    warnings.push_back(counted(count, "inverter source", "inverter sources") +
+  const auto converters = static_cast<std::size_t>(
+      std::count_if(n.inverter_sources.begin(), n.inverter_sources.end(),
+                    [](const auto& source) { return source.is_in_service() && !source.doubly_fed; }));
+  if (converters > 0 && options.method == Method::classical)
+    warnings.push_back(counted(converters, "inverter source", "inverter sources") +
                        " left out: a voltage behind an impedance does not describe them");
   const auto drives = static_cast<std::size_t>(
       std::count_if(n.induction_motors.begin(), n.induction_motors.end(),
@@ -39,11 +47,14 @@ void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<s
   if (drives > 0)
     warnings.push_back(counted(drives, "converter-fed motor", "converter-fed motors") +
                        " left out: feeds_back is not set");
+  if (options.case_kind == CaseKind::min && !n.inverter_sources.empty())
+    warnings.push_back(counted(n.inverter_sources.size(), "inverter source", "inverter sources") +
+                       " left out: smallest currents are wanted");
   if (options.case_kind == CaseKind::min && !n.induction_motors.empty())
     warnings.push_back(
         counted(n.induction_motors.size(), "induction motor entry", "induction motor entries") +
         " left out: smallest currents are wanted");
-  if (const auto count = live_count(n.power_station_units))
+  if (const auto count = live_count(n.power_station_units); count > 0 && options.method == Method::classical)
     warnings.push_back(
         counted(count, "power station unit", "power station units") +
         " taken as separate machine and transformer: the classical method has no common correction");
@@ -114,18 +125,31 @@ void Study::prepare() {
     apply_scenario(network_, *options_.scenario);
     scenario_id_ = network_.scenarios[*options_.scenario].id;
   }
+  const bool iec = options_.method == Method::iec60909;
+  if (iec && !network_.power_station_units.empty() && !options_.inside_unit) as_given_ = network_;
   defaults_ = fill_defaults(network_);
   apply_case_kind(network_, options_.case_kind);
-  model_ = build_sequence_model(network_, {options_.include_shunts, {}});
+  if (iec) correct();
+  model_ = build_sequence_model(network_, {options_.include_shunts});
   wanted_ = options_.buses;
   for (std::size_t b = 0; b < network_.buses.size() && options_.buses.empty(); ++b)
     if (network_.buses[b].is_in_service()) wanted_.push_back(static_cast<BusIndex>(b));
   const auto modelled = std::chrono::steady_clock::now();
-  solver_ = std::make_unique<FaultSolver>(model_, prefault_of(network_, options_.prefault), options_.threads);
+  solver_ = std::make_unique<FaultSolver>(model_, prefault_of(network_, options_), options_.threads);
+  if (iec)
+    evaluation_ = std::make_unique<iec60909::Evaluation>(network_, *solver_, options_.iec60909,
+                                                         options_.case_kind, options_.threads);
   using Milliseconds = std::chrono::duration<double, std::milli>;
   timing_ = {Milliseconds(modelled - start).count(),
              Milliseconds(std::chrono::steady_clock::now() - modelled).count()};
+  for (const iec60909::Correction& c : corrections_)
+    if (as_given_ && c.element.kind == ElementKind::synchronous_machine && c.name != "K_G")
+      for (std::uint32_t u = 0; u < network_.power_station_units.size(); ++u)
+        if (network_.power_station_units[u].machine == c.element.index)
+          inside_.emplace_back(model_.node_of_bus[at(network_.synchronous_machines[c.element.index].bus)], u);
   warn_of_unused(network_, options_, warnings_);
+  if (evaluation_)
+    warnings_.insert(warnings_.end(), evaluation_->notes().begin(), evaluation_->notes().end());
   for (const DefaultUse& use : defaults_)
     if (use.field == "r0_ohm_per_km, x0_ohm_per_km")
       warnings_.push_back("earth-fault currents rest on assumed zero-sequence data of " +
@@ -133,16 +157,56 @@ void Study::prepare() {
   warn_of_model(network_, model_, solver_->quality(), warnings_);
 }
 
-void FaultLoop::at_bus(BusIndex bus, const std::function<void(const FaultResult&)>& visit) {
+void Study::correct() {
+  std::vector<Finding> missing;
+  corrections_ = iec60909::corrections(network_, options_.case_kind, options_.iec60909.edition,
+                                       options_.inside_unit, missing);
+  if (!missing.empty()) throw NetworkError(std::move(missing));
+  std::size_t tapped = 0;
+  for (const Transformer& t : network_.transformers) tapped += t.tap ? 1 : 0;
+  for (const ThreeWindingTransformer& t : network_.three_winding_transformers) tapped += t.tap ? 1 : 0;
+  if (tapped > 0)
+    warnings_.push_back(counted(tapped, "tap position", "tap positions") +
+                        " not used: IEC 60909-0 takes the main position");
+  iec60909::apply(corrections_, network_);
+  DefaultUse tolerance{"voltage_tolerance_percent", "10", "IEC 60038 (from memory)", {}};
+  for (std::uint32_t b = 0; b < network_.buses.size(); ++b)
+    if (network_.buses[b].nominal_kv <= 1 && !network_.buses[b].voltage_tolerance_percent)
+      tolerance.elements.push_back({ElementKind::bus, b});
+  if (!tolerance.elements.empty()) defaults_.push_back(std::move(tolerance));
+}
+
+std::optional<std::uint32_t> Study::unit_around(BusIndex bus) const {
+  for (const auto& [node, unit] : inside_)
+    if (node == model_.node_of_bus[at(bus)]) return unit;
+  return std::nullopt;
+}
+
+void FaultLoop::at_bus(BusIndex bus, const FaultVisit& visit) {
+  if (const auto unit = study_->unit_around(bus)) {
+    StudyOptions inside = study_->options();
+    inside.scenario.reset();
+    inside.inside_unit = unit;
+    inside.buses = {bus};
+    const Study own(Network(study_->as_given()), inside);
+    FaultLoop(own).at_bus(bus, visit);
+    return;
+  }
   const StudyOptions& options = study_->options();
   for (const FaultKind kind : options.kinds) {
     study_->solver().solve({bus, kind, options.phase_ohm, options.earth_ohm}, options.fault, *workspace_,
                            result_);
-    visit(result_);
+    const bool inside = options.inside_unit.has_value();
+    if (const auto* evaluation = study_->iec60909()) {
+      const iec60909::Quantities quantities = evaluation->of(result_);
+      visit({result_, options.case_kind, &quantities, inside});
+    } else {
+      visit({result_, options.case_kind, nullptr, inside});
+    }
   }
 }
 
-void Study::for_each_fault(const std::function<void(const FaultResult&)>& visit) const {
+void Study::for_each_fault(const FaultVisit& visit) const {
   FaultLoop loop(*this);
   for (const BusIndex bus : wanted_) loop.at_bus(bus, visit);
 }

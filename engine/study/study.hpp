@@ -6,6 +6,7 @@
 
 #include "engine/fault/fault_solver.hpp"
 #include "engine/network/finding.hpp"
+#include "engine/standard/iec60909/quantities.hpp"
 
 namespace kiloamp {
 
@@ -18,17 +19,36 @@ struct PrefaultValue {
 };
 using PrefaultChoice = std::variant<PrefaultAsGiven, PrefaultFlat, PrefaultValue>;
 
+/// Classical: voltage behind impedance, the case's impedances as they are. IEC 60909: equivalent voltage
+/// source c Un / sqrt(3) at the fault, corrected impedances.
+enum class Method : std::uint8_t { classical, iec60909 };
+
 struct StudyOptions {
+  Method method = Method::classical;
+  iec60909::Options iec60909;
   CaseKind case_kind = CaseKind::max;
   std::optional<std::size_t> scenario;  ///< index in Network::scenarios
   PrefaultChoice prefault = PrefaultAsGiven{};
   bool include_shunts = false;
   std::vector<FaultKind> kinds{kAllFaults.begin(), kAllFaults.end()};
   std::vector<BusIndex> buses;  ///< empty: all buses in service
+  /// IEC 60909: the power station unit between whose machine and transformer the faults lie. FaultLoop sets
+  /// it for the buses where it is needed.
+  std::optional<std::uint32_t> inside_unit;
   Complex phase_ohm = 0, earth_ohm = 0;
   FaultOptions fault;
   int threads = 1;
 };
+
+/// A fault as the study's method sees it.
+struct StudiedFault {
+  const FaultResult& result;
+  CaseKind case_kind = CaseKind::max;
+  const iec60909::Quantities* iec60909 = nullptr;  ///< of that method
+  bool inside_unit = false;                        ///< solved with the factors for a fault inside a unit
+  operator const FaultResult&() const { return result; }
+};
+using FaultVisit = std::function<void(const StudiedFault&)>;
 
 /// Owns the network in the studied state, its model and the solved sequence networks. Not movable: the parts
 /// refer to each other.
@@ -52,38 +72,52 @@ class Study {
   [[nodiscard]] const std::vector<std::string>& warnings() const { return warnings_; }
   /// Wall time of the two parts of construction.
   struct Timing {
-    double model_ms = 0;     ///< state, defaults, sequence networks
-    double solution_ms = 0;  ///< assembly, ordering, factors, selected inverse
+    double model_ms = 0;  ///< state, defaults, corrections, sequence networks
+    double solution_ms =
+        0;  ///< assembly, ordering, factors, selected inverse; companion networks of the method
   };
   [[nodiscard]] const Timing& timing() const { return timing_; }
   [[nodiscard]] const std::string& scenario_id() const { return scenario_id_; }
 
+  /// IEC 60909: what was corrected, and what follows from a fault; null for another method.
+  [[nodiscard]] const std::vector<iec60909::Correction>& corrections() const { return corrections_; }
+  [[nodiscard]] const iec60909::Evaluation* iec60909() const { return evaluation_.get(); }
+  /// The unit between whose machine and transformer the bus lies, when its faults need factors of their own.
+  [[nodiscard]] std::optional<std::uint32_t> unit_around(BusIndex bus) const;
+  /// The network after the scenario and before any correction; only where unit_around may be asked for.
+  [[nodiscard]] const Network& as_given() const { return *as_given_; }
   /// The buses whose faults are wanted: those of the options, else all in service in the case's order.
   [[nodiscard]] const std::vector<BusIndex>& wanted_buses() const { return wanted_; }
   /// Solves every wanted fault, bus by bus and kind by kind, and hands each to `visit`; the result is only
   /// valid during the call. FaultLoop does the same for one bus at a time.
-  void for_each_fault(const std::function<void(const FaultResult&)>& visit) const;
+  void for_each_fault(const FaultVisit& visit) const;
 
  private:
   void prepare();
+  void correct();
 
   Network network_;
   StudyOptions options_;
   std::string scenario_id_;
   std::vector<DefaultUse> defaults_;
+  std::optional<Network> as_given_;
+  std::vector<iec60909::Correction> corrections_;
   SequenceModel model_;
   std::unique_ptr<FaultSolver> solver_;
+  std::unique_ptr<iec60909::Evaluation> evaluation_;
+  std::vector<std::pair<Node, std::uint32_t>> inside_;  ///< nodes inside units
   std::vector<std::string> warnings_;
   std::vector<BusIndex> wanted_;
   Timing timing_;
 };
 
-/// One thread's way through the faults of a study.
+/// One thread's way through the faults of a study. A bus inside a power station unit is solved in a network
+/// of its own, with the factors that IEC 60909-0 has for it.
 class FaultLoop {
  public:
   explicit FaultLoop(const Study& study) : study_(&study), workspace_(study.solver().make_workspace()) {}
   /// The wanted kinds of fault at one bus, in order; the result is only valid during the call.
-  void at_bus(BusIndex bus, const std::function<void(const FaultResult&)>& visit);
+  void at_bus(BusIndex bus, const FaultVisit& visit);
 
  private:
   const Study* study_;

@@ -57,6 +57,7 @@ const Table& level_table() {
           .number<&L::x0_over_x1>("x0_over_x1", Range::positive)
           .number<&L::r0_over_x0>("r0_over_x0", Range::non_negative)
           .number<&L::z2_over_z1>("z2_over_z1", Range::positive)
+          .number<&L::voltage_factor>("voltage_factor", Range::positive)
           .number<&L::r1_ohm>("r1_ohm", Range::non_negative)
           .number<&L::x1_ohm>("x1_ohm", Range::positive, false, kSign)
           .number<&L::r2_ohm>("r2_ohm", Range::non_negative)
@@ -80,6 +81,16 @@ const Table& tap_table() {
   static const Table t = TableMaker<Tap>(ElementKind::bus, false)
                              .word<&Tap::side, &kSide>("side", true)
                              .number<&Tap::position_percent>("position_percent", Range::any, true)
+                             .done();
+  return t;
+}
+
+const Table& worst_load_table() {
+  using W = WorstLoad;
+  static const Table t = TableMaker<W>(ElementKind::transformer, false)
+                             .number<&W::voltage_kv>("voltage_kv", Range::positive, true)
+                             .number<&W::current_a>("current_a", Range::non_negative, true)
+                             .number<&W::power_factor>("power_factor", Range::fraction, true)
                              .done();
   return t;
 }
@@ -147,6 +158,7 @@ Table buses() {
       .number<&Bus::nominal_kv>("nominal_kv", Range::positive, true)
       .number<&Bus::prefault_pu>("prefault_pu", Range::positive)
       .number<&Bus::prefault_deg>("prefault_deg", Range::any)
+      .number<&Bus::voltage_tolerance_percent>("voltage_tolerance_percent", Range::positive)
       .numbers<&Bus::position>("position", Range::any)
       .text<&Bus::zone>("zone")
       .done();
@@ -185,6 +197,8 @@ Table machines() {
       .word<&M::rotor, &kRotor>("rotor")
       .word<&M::excitation, &kExcitation>("excitation")
       .number<&M::voltage_range_percent>("voltage_range_percent", Range::non_negative)
+      .number<&M::lambda_max>("lambda_max", Range::positive)
+      .number<&M::lambda_min>("lambda_min", Range::positive)
       .choice({{"ra_percent"}, {"x_over_r"}}, kOneResistance)
       .done();
 }
@@ -214,6 +228,16 @@ Table motors() {
       .done();
 }
 
+const Table& doubly_fed_table() {
+  using D = DoublyFed;
+  static const Table t = TableMaker<D>(ElementKind::inverter_source, false)
+                             .number<&D::peak_ka>("peak_ka", Range::positive, true, kPlate)
+                             .number<&D::kappa>("kappa", Range::positive)
+                             .number<&D::r_over_x>("r_over_x", Range::positive, true, kPlate)
+                             .done();
+  return t;
+}
+
 Table inverters() {
   using I = InverterSource;
   return TableMaker<I>(ElementKind::inverter_source)
@@ -226,6 +250,7 @@ Table inverters() {
       .word<&I::negative_sequence, &kNegative>("negative_sequence")
       .number<&I::z2_percent>("z2_percent", Range::positive)
       .number<&I::x2_over_r2>("x2_over_r2", Range::positive)
+      .object<&I::doubly_fed>("doubly_fed", doubly_fed_table())
       .done();
 }
 
@@ -287,6 +312,7 @@ Table transformers() {
       .object<&T::tap>("tap", tap_table())
       .boolean<&T::on_load_tap_changer>("on_load_tap_changer")
       .number<&T::tap_range_percent>("tap_range_percent", Range::non_negative)
+      .object<&T::worst_load>("worst_load", worst_load_table())
       .word<&T::core, &kCore>("core")
       .choice({{"r_percent"}, {"x_over_r"}, {"load_loss_kw"}}, kOneResistance)
       .done();

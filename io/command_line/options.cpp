@@ -101,7 +101,9 @@ CLI::Validator into(std::string (*read)(const std::string&, Target&), Target& ta
 }
 
 struct Texts {  // what the custom options were given as
-  std::string kinds, prefault, phase, earth, method, case_kind, elements;
+  std::string kinds, prefault, phase, earth, method, edition, kappa, case_kind, elements;
+  std::optional<double> tmin_s, duration_s;
+  bool one_kind_only = false;  // of the verb whose options are being made
   std::optional<int> depth;
 };
 
@@ -146,12 +148,17 @@ void add_study_options(CLI::App& app, Command& c, Texts& t) {
   app.add_option("--scenario", c.scenario, "state of the network, by its id in the case. Default: as written")
       ->type_name("ID");
   app.add_option("--case-kind", t.case_kind,
-                 "max: largest currents (default); min: feeders at min, hot conductors, motors out")
+                 "max: largest currents (default); min: feeders at min, hot conductors, motors out" +
+                     std::string(t.one_kind_only ? "" : "; both: side by side"))
       ->type_name("KIND")
-      ->check(one_of({"max", "min"}));
-  app.add_option("--method", t.method, "classical: voltage behind impedance (the only one)")
+      ->check(one_of(t.one_kind_only ? std::vector<std::string_view>{"max", "min"}
+                                     : std::vector<std::string_view>{"max", "min", "both"}));
+  app.add_option("--method", t.method, "classical: voltage behind impedance (default); iec60909: IEC 60909-0")
       ->type_name("METHOD")
-      ->check(one_of({"classical"}));
+      ->check(one_of({"classical", "iec60909"}));
+  app.add_option("--edition", t.edition, "iec60909: edition of the voltage factors, 2016 (default) or 2001")
+      ->type_name("YEAR")
+      ->check(one_of({"2016", "2001"}));
   app.add_option("--prefault", t.prefault,
                  "prefault voltage: case (as the case gives it, 1 pu where it does not; default), flat (1 "
                  "pu), or a number in pu")
@@ -194,6 +201,18 @@ void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
          "voltages, branch currents and neutral currents up to N buses away. Default: 0, the faulted bus")
       ->type_name("N")
       ->check(CLI::Range(0, 1000));
+  app.add_option("--tmin", t.tmin_s, "iec60909: minimum time delay for Ib and i_dc, in s. Default: 0.1")
+      ->type_name("S")
+      ->check(CLI::Range(1e-6, 10.0));
+  app.add_option("--duration", t.duration_s, "iec60909: duration Tk for Ith, in s. Default: 1")
+      ->type_name("S")
+      ->check(CLI::Range(1e-6, 100.0));
+  app.add_option("--kappa-method", t.kappa,
+                 "iec60909: a, b or c (default) of the standard's ways to find kappa")
+      ->type_name("LETTER")
+      ->check(one_of({"a", "b", "c"}));
+  app.add_flag("--intermediate", c.intermediate,
+               "json and iec60909: correction factors, corrected impedances, machines with mu and q");
   app.add_flag(
       "--cross-check", c.cross_check,
       "solve every fault again in phase coordinates and print the largest difference; above 1e-6 exit 1");
@@ -254,6 +273,7 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
       "Three-phase and line-to-ground current at every bus with each element out alone: largest and "
       "smallest, and the outage that\ngoverns; outages that split the network.\nExample: kiloamp outages "
       "plant.json --elements lines,transformers --area main");
+  t.one_kind_only = true;
   add_study_options(*outages, c, t);
   outages
       ->add_option("--depth", t.depth,
@@ -306,6 +326,13 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
   }
   c.verb = app.get_subcommands().front()->get_name();
   if (t.case_kind == "min") c.study.case_kind = CaseKind::min;
+  c.both_kinds = t.case_kind == "both";
+  const bool iec = t.method == "iec60909";
+  if (iec) c.study.method = Method::iec60909;
+  if (t.edition == "2001") c.study.iec60909.edition = iec60909::Edition::e2001;
+  if (!t.kappa.empty()) c.study.iec60909.kappa = static_cast<iec60909::KappaMethod>(t.kappa[0] - 'a');
+  c.study.iec60909.tmin_s = t.tmin_s.value_or(c.study.iec60909.tmin_s);
+  c.study.iec60909.duration_s = t.duration_s.value_or(c.study.iec60909.duration_s);
   if (c.verb == "fault") c.contributions = true;
   c.outages.depth = t.depth;
   c.outages.threads = c.study.threads;
@@ -314,6 +341,19 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
     return wrong;
   };
   if (misuse(c.table != "faults" && c.format != "csv", "--table goes with --format csv"))
+    return {std::nullopt, kInputWrong};
+  const bool iec_options =
+      !t.edition.empty() || !t.kappa.empty() || t.tmin_s || t.duration_s || c.intermediate;
+  const bool classical_options =
+      !t.prefault.empty() || !t.phase.empty() || !t.earth.empty() || c.study.include_shunts;
+  if (misuse(!iec && iec_options,
+             "--edition, --tmin, --duration, --kappa-method and --intermediate go with --method iec60909"))
+    return {std::nullopt, kInputWrong};
+  if (misuse(iec && classical_options,
+             "--method iec60909 has its own voltage, bolted faults and no shunts: leave out --prefault, "
+             "--phase-impedance, --earth-impedance and --shunts"))
+    return {std::nullopt, kInputWrong};
+  if (misuse(c.intermediate && c.format != "json", "--intermediate goes with --format json"))
     return {std::nullopt, kInputWrong};
   if (misuse(c.verb == "sweep" && c.contributions && c.format != "text",
              "--contributions goes with --format text; csv has --table contributions, json has them always"))

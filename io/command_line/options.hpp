@@ -20,6 +20,8 @@ struct Command {
   std::optional<std::string> output;
   OutageOptions outages;  ///< of the verb outages; threads are those of the study
   bool contributions = false;
+  bool both_kinds = false;  ///< study.case_kind is max; min is wanted too
+  bool intermediate = false;
   bool cross_check = false;
   bool timing = false;
 };

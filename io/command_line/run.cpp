@@ -105,19 +105,24 @@ bool resolve(Command& c, const Network& network, std::ostream& err) {
   return good;
 }
 
-std::unique_ptr<FaultReport> make_report(const Command& c, const Study& study, const ReportFacts& facts,
+std::unique_ptr<FaultReport> make_report(const Command& c, const Studies& studies, const ReportFacts& facts,
                                          Sink sink) {
   if (c.format == "csv")
-    return csv_report(study, c.table == "faults" ? CsvTable::faults : CsvTable::contributions,
+    return csv_report(studies, c.table == "faults" ? CsvTable::faults : CsvTable::contributions,
                       std::move(sink));
-  if (c.format == "json") return json_report(study, facts, std::move(sink));
-  return text_report(study, facts, std::move(sink));
+  if (c.format == "json") return json_report(studies, facts, std::move(sink));
+  return text_report(studies, facts, std::move(sink));
 }
 
 ReportFacts facts_of(const Command& c, const ReadResult& read) {
-  return {c.verb,          c.case_file == "-" ? "standard input" : c.case_file,
-          read.sha256,     read.remarks.size(),
-          c.contributions, c.verb == "fault" || c.study.fault.depth > 0};
+  return {c.verb,
+          c.case_file == "-" ? "standard input" : c.case_file,
+          read.sha256,
+          read.remarks.size(),
+          c.contributions,
+          c.verb == "fault" || c.study.fault.depth > 0,
+          c.verb != "outages",
+          c.intermediate};
 }
 
 int run_outages(const Command& c, const Study& study, const ReadResult& read, Stages& stages,
@@ -143,25 +148,25 @@ int run_outages(const Command& c, const Study& study, const ReadResult& read, St
   return kRan;
 }
 
-// Solves and writes on the study's threads. With `timing`, returns the part of the wall time that the
+// Solves and writes on the studies' threads. With `timing`, returns the part of the wall time that the
 // formulas took: that of the threads' own time.
-double write_faults(const Study& study, FaultReport& report, bool timing) {
+double write_faults(const Studies& studies, FaultReport& report, bool timing) {
   using Clock = std::chrono::steady_clock;
   struct Thread {
-    explicit Thread(const Study& s) : loop(s) {}
-    FaultLoop loop;
+    std::vector<FaultLoop> loops;  // one per study
     std::unique_ptr<ReportPiece> piece;
     Clock::duration formulas{}, writing{};
   };
-  std::deque<Thread> threads;
-  for (int t = 0; t < std::max(1, study.options().threads); ++t) {
-    threads.emplace_back(study);
-    threads.back().piece = report.make_piece();
+  const int count = std::max(1, studies.front()->options().threads);
+  std::vector<Thread> threads(static_cast<std::size_t>(count));
+  for (Thread& thread : threads) {
+    for (const Study* study : studies) thread.loops.emplace_back(*study);
+    thread.piece = report.make_piece();
   }
-  const auto& buses = study.wanted_buses();
+  const auto& buses = studies.front()->wanted_buses();
   const auto start = Clock::now();
   in_ordered_pieces(
-      buses.size(), kBusesInPiece, study.options().threads,
+      buses.size(), kBusesInPiece, count,
       [&](int t, std::size_t first, std::size_t last) {
         Thread& own = threads[static_cast<std::size_t>(t)];
         auto since = Clock::now();
@@ -171,11 +176,12 @@ double write_faults(const Study& study, FaultReport& report, bool timing) {
           since = now;
         };
         for (std::size_t b = first; b < last; ++b)
-          own.loop.at_bus(buses[b], [&](const FaultResult& result) {
-            lap(own.formulas);
-            own.piece->fault(result);
-            lap(own.writing);
-          });
+          for (FaultLoop& loop : own.loops)
+            loop.at_bus(buses[b], [&](const StudiedFault& fault) {
+              lap(own.formulas);
+              own.piece->fault(fault);
+              lap(own.writing);
+            });
       },
       [&](int t) {
         Thread& own = threads[static_cast<std::size_t>(t)];
@@ -193,18 +199,23 @@ double write_faults(const Study& study, FaultReport& report, bool timing) {
          static_cast<double>(formulas.count()) / static_cast<double>(all.count());
 }
 
-int run_faults(const Command& c, const Study& study, const ReadResult& read, Stages& stages,
+int run_faults(const Command& c, const Studies& studies, const ReadResult& read, Stages& stages,
                double& formulas_ms, std::ostream& out, std::ostream& err) {
   const ReportFacts facts = facts_of(c, read);
   Output output(c.output, out);
-  const auto report = make_report(c, study, facts, output.sink());
+  const auto report = make_report(c, studies, facts, output.sink());
   std::optional<CrossCheck> check;
   if (c.cross_check) {
-    check = cross_check(study);
+    for (const Study* study : studies) {
+      CrossCheck one = cross_check(*study);
+      const std::size_t before = check ? check->faults : 0;
+      if (!check || one.largest > check->largest) check = one;
+      check->faults = before + one.faults;
+    }
     stages.next("cross-check");
   }
   report->begin();
-  formulas_ms = write_faults(study, *report, c.timing);
+  formulas_ms = write_faults(studies, *report, c.timing);
   report->end(check ? &*check : nullptr);
   output.commit();
   if (!check) return kRan;
@@ -213,13 +224,13 @@ int run_faults(const Command& c, const Study& study, const ReadResult& read, Sta
         << check->largest << "\n";
   if (check->largest <= kCrossCheckLimit) return kRan;
   err << "kiloamp: the cross-check disagrees: " << check->largest << " in the " << check->quantity
-      << " of a fault at " << study.network().bus(check->bus).id << "\n";
+      << " of a fault at " << studies.front()->network().bus(check->bus).id << "\n";
   return kNotComputed;
 }
 
 // Which buses a row of a sequence network stands for.
 std::string place_of(const Network& state, const StudyOptions& options, const sparse::NumericalError& error) {
-  const SequenceModel model = build_sequence_model(state, {options.include_shunts, {}});
+  const SequenceModel model = build_sequence_model(state, {options.include_shunts});
   static constexpr const char* kNames[] = {"zero", "positive", "negative"};
   std::string text = std::string(kNames[error.lane()]) + " sequence, near bus ";
   const auto buses = model.buses_of(static_cast<Node>(error.row()));
@@ -237,16 +248,23 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
     return kInputWrong;
   }
   if (!resolve(c, *read.network, err)) return kInputWrong;
-  std::optional<Study> made;
+  std::optional<Study> made, smallest;
   try {
+    if (c.both_kinds) {
+      StudyOptions options = c.study;
+      options.case_kind = CaseKind::min;
+      smallest.emplace(Network(*read.network), options);
+    }
     const Study& study = made.emplace(std::move(*read.network), c.study);
+    Studies studies{&study};
+    if (smallest) studies.push_back(&*smallest);
     stages.next("notes");
     stages.apart("model", study.timing().model_ms);
     stages.apart("solution", study.timing().solution_ms);
     if (c.verb != "check") {
       double formulas_ms = 0;
       const int code = c.verb == "outages" ? run_outages(c, study, read, stages, out, err)
-                                           : run_faults(c, study, read, stages, formulas_ms, out, err);
+                                           : run_faults(c, studies, read, stages, formulas_ms, out, err);
       stages.next("writing");
       if (formulas_ms > 0) stages.apart("fault formulas", formulas_ms);
       if (c.timing) stages.print(err);
