@@ -11,6 +11,7 @@ namespace {
 
 constexpr double kEquivalentFrequency = 0.4;  // 20 Hz of 50, 24 Hz of 60
 constexpr double kFarRatio = 2;               // I"k / Ir up to which a machine is far
+constexpr double kNearRatio = 1.25;           // I"k / Ik from which the formula of n is meant; below it n = 1
 constexpr double kLimitLv = 1.8, kLimitHv = 2.0;
 constexpr std::size_t kAtPeak = 0, kNoMotors = 1, kAtDc = 2;
 
@@ -143,7 +144,7 @@ void Evaluation::find_branch_ratios() {
   };
   const auto take = [&](std::size_t n, Complex admittance) {
     const Complex z = 1.0 / admittance;
-    if (!(z.imag() > 0)) return;
+    if (!(z.imag() > 0) || z.real() < 0) return;  // a negative arm of a star says nothing of the branch
     const double ratio = z.real() / z.imag();
     const auto [place, fresh] = smallest.emplace(level(n), ratio);
     if (!fresh) place->second = std::min(place->second, ratio);
@@ -307,7 +308,8 @@ void Evaluation::thermal(Quantities& q) const {
     return;
   }
   q.m = m_factor(*q.kappa, network_->frequency_hz, options_.duration_s);
-  q.n = n_factor(q.ikss_ka / *q.ik_ka, options_.duration_s);
+  const double ratio = q.ikss_ka / *q.ik_ka;
+  q.n = ratio < kNearRatio ? 1 : n_factor(ratio, options_.duration_s);
   q.ith_ka = q.ikss_ka * std::sqrt(*q.m + *q.n);
   q.i2t_ka2s = *q.ith_ka * *q.ith_ka * options_.duration_s;
 }

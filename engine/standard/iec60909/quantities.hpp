@@ -64,7 +64,7 @@ struct MotorRule {
 /// left out of the sum are proven to be such (NearSources). Drives and motors count as the standard has them:
 /// a drive gives nothing to Ib and Ik. Ik is I"k without motors (meshed rule, 11.2.4); at the terminals of a
 /// machine with lambda_max or lambda_min its part is lambda Ir, with static excitation fed from them 0. Ith =
-/// I"k sqrt(m + n).
+/// I"k sqrt(m + n), n = 1 for I"k / Ik below 1.25: annex A has its formula from there on.
 ///
 /// Source: IEC 60909-0:2016, clauses named, from memory.
 class Evaluation {
