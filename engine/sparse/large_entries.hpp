@@ -28,18 +28,19 @@ class LargeEntries {
   void column(Index j, double threshold, const std::function<void(Index k, Scalar z)>& visit);
 
  private:
-  [[nodiscard]] Scalar entry(Index slot) const;
   [[nodiscard]] Scalar substituted(Index position) const;
+  void keep(Index position, Scalar x);
+  [[nodiscard]] double largest_above(Index position) const;
 
-  const LaneFactors<Scalar, padded_width(Lanes)>* factors_;
   const EliminationPlan* plan_;
-  int lane_;
+  std::vector<Scalar> entry_;  // of L and 1 / D, by slot
   // By position:
   std::vector<double> floor_;
   std::vector<double> growth_;       // G
   std::vector<double> least_floor_;  // smallest in the subtree
   std::vector<Index> child_begin_, children_;
-  std::vector<Scalar> x_;  // of the rows computed for the column at hand
+  std::vector<Scalar> x_;     // of the rows computed for the column at hand
+  std::vector<double> size_;  // |x|
   std::vector<bool> on_path_;
   std::vector<Index> path_, stack_;
 };

@@ -277,8 +277,10 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
     output.commit();
     return kRan;
   } catch (const NetworkError& error) {
+    std::vector<InputError> errors;
     for (const Finding& finding : error.findings())
-      err << render(located(c.case_file, *read.network, finding));
+      errors.push_back(located(c.case_file, *read.network, finding));
+    err << render(errors);
     return kInputWrong;
   } catch (const sparse::NumericalError& error) {
     err << "kiloamp: not computed: " << error.what() << " ("

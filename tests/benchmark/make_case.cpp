@@ -103,7 +103,7 @@ class Writer {
       if (k > 3 && chance(0.3))
         line("M" + std::to_string(s) + "_" + std::to_string(whole(0, k - 2)), id, uniform(0.2, 3), 0.16, 0.12,
              0.6, 0.35);
-      if (chance(0.05))
+      if (chance(0.06))
         motors_.push_back(format(
             R"({"id": "%s", "bus": "%s", "rated_mw": %.2f, "rated_kv": 20, "power_factor": 0.88, "efficiency_percent": 96, "locked_rotor_ratio": 5.5, "pole_pairs": 2, "r_over_x": 0.1})",
             next("A").c_str(), id.c_str(), uniform(0.5, 4)));
@@ -122,7 +122,7 @@ class Writer {
   }
   void machine(long s) {
     machines_.push_back(format(
-        R"({"id": "%s", "bus": "H%ld", "role": "generator", "rated_mva": %.0f, "rated_kv": 110, "xd_subtransient_percent": %.1f, "x0_percent": 8, "ra_percent": 0.3, "neutral": {"grounding": "solid"}})",
+        R"({"id": "%s", "bus": "H%ld", "role": "generator", "rated_mva": %.0f, "rated_kv": 110, "xd_subtransient_percent": %.1f, "x0_percent": 8, "ra_percent": 0.3, "power_factor": 0.85, "neutral": {"grounding": "solid"}})",
         next("G").c_str(), s, uniform(40, 250), uniform(14, 28)));
   }
 

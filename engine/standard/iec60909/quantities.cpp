@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <future>
 #include <limits>
 #include <map>
 
@@ -38,15 +39,7 @@ Evaluation::Evaluation(const Network& corrected, const FaultSolver& solver, cons
     : network_(&corrected), solver_(&solver), options_(options), kind_(kind) {
   const SequenceModel& model = solver.model();
   dc_ratio_ = dc_frequency_ratio(corrected.frequency_hz, options.tmin_s);
-  {
-    std::vector<SequenceModel> models;
-    models.push_back(build_sequence_model(at_frequency(corrected, kEquivalentFrequency, true)));
-    Network still = corrected;
-    for (InductionMotor& m : still.induction_motors) m.in_service = false;
-    models.push_back(build_sequence_model(still));
-    if (dc_ratio_) models.push_back(build_sequence_model(at_frequency(corrected, *dc_ratio_, false)));
-    companions_.emplace(solver, models, threads);
-  }
+  build_companions(threads);
   collect_machines();
   std::vector<double> e_pu(model.node_count(), 1.0);
   for (std::size_t n = 0; n < e_pu.size(); ++n)
@@ -58,6 +51,23 @@ Evaluation::Evaluation(const Network& corrected, const FaultSolver& solver, cons
   find_converters();
   if (options.kappa != KappaMethod::c) find_branch_ratios();
   judge_motor_rules();
+}
+
+void Evaluation::build_companions(int threads) {
+  const Network& n = *network_;
+  const auto policy = threads > 1 ? std::launch::async : std::launch::deferred;
+  auto at_peak =
+      std::async(policy, [&] { return build_sequence_model(at_frequency(n, kEquivalentFrequency, true)); });
+  auto no_motors = std::async(policy, [&] {
+    Network still = n;
+    for (InductionMotor& m : still.induction_motors) m.in_service = false;
+    return build_sequence_model(still);
+  });
+  std::vector<SequenceModel> models;
+  models.push_back(at_peak.get());
+  models.push_back(no_motors.get());
+  if (dc_ratio_) models.push_back(build_sequence_model(at_frequency(n, *dc_ratio_, false)));
+  companions_.emplace(*solver_, models, threads);
 }
 
 void Evaluation::collect_machines() {

@@ -91,6 +91,7 @@ class Evaluation {
     std::optional<double> mw_per_pole_pair{};
   };
 
+  void build_companions(int threads);
   void collect_machines();
   void find_converters();
   void find_branch_ratios();
