@@ -67,7 +67,7 @@ class TextPiece : public ReportPiece {
         cells.push_back(z ? readable(z->real()) : "-");
         cells.push_back(z ? readable(z->imag()) : "-");
       }
-    rows.push_back(std::move(cells));
+    add_row(std::move(cells), again, studied.case_kind);
     if (facts_.contributions) details += detail(studied);
   }
 
@@ -76,6 +76,20 @@ class TextPiece : public ReportPiece {
   std::string details;
 
  private:
+  // The smallest current of a kind stands below the largest of the same kind, although it is solved later.
+  void add_row(std::vector<std::string> cells, bool again, CaseKind kind) {
+    if (!again) {
+      first_row_ = rows.size();
+      smallest_ = 0;
+    }
+    rows.push_back(std::move(cells));
+    if (!several_ || kind != CaseKind::min) return;
+    const auto place = rows.begin() + static_cast<std::ptrdiff_t>(first_row_ + 2 * smallest_ + 1);
+    std::rotate(place, rows.end() - 1, rows.end());
+    (*place)[2].clear();  // the kind of fault is said in the row above
+    ++smallest_;
+  }
+
   std::string detail(const StudiedFault& studied) {
     const FaultResult& r = studied.result;
     std::string out = "\n" + study_.network().bus(r.fault.bus).id + ", " + fault_words(r.fault.kind) +
@@ -162,6 +176,7 @@ class TextPiece : public ReportPiece {
   const ReportFacts& facts_;
   bool several_;
   std::optional<BusIndex> last_;
+  std::size_t first_row_ = 0, smallest_ = 0;  // of the bus at hand
 };
 
 class TextReport : public FaultReport {

@@ -33,8 +33,9 @@ ShuntElement feeder(const Network& n, std::uint32_t i) {
     z2 = {l.r2_ohm.value_or(z1.real()), l.x2_ohm.value_or(z1.imag())};
     if (l.x0_ohm) z0 = Complex(l.r0_ohm.value_or(0), *l.x0_ohm);
   } else {
+    const double driving = l.voltage_factor.value_or(1);  // voltage behind the levels, pu of nominal
     const double mva = l.three_phase_mva ? *l.three_phase_mva : std::sqrt(3.0) * kv * *l.three_phase_ka;
-    z1 = magnitude_and_ratio(kv * kv / mva, *l.x_over_r);
+    z1 = magnitude_and_ratio(driving * kv * kv / mva, *l.x_over_r);
     z2 = z1 * l.z2_over_z1.value_or(1);
     if (l.x0_over_x1) z0 = Complex(l.r0_over_x0.value_or(0), 1) * (*l.x0_over_x1 * z1.imag());
     if (l.line_to_ground_ka || l.line_to_ground_mva) {
@@ -44,7 +45,7 @@ ShuntElement feeder(const Network& n, std::uint32_t i) {
         if (l.line_to_ground_mva_basis == EarthFaultMvaBasis::single_phase) ka *= 3;
       }
       // Bisection on |Z0|: the size of the sum grows with it beyond the sum's nearest point to 0.
-      const double want = std::sqrt(3.0) * kv / ka;
+      const double want = driving * std::sqrt(3.0) * kv / ka;
       const Complex unit = magnitude_and_ratio(1, l.x0_over_r0.value_or(*l.x_over_r));
       double low = 0, high = 2 * (want + std::abs(z1 + z2));
       for (int step = 0; step < 200; ++step) {

@@ -58,6 +58,15 @@ void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<s
     warnings.push_back(
         counted(count, "power station unit", "power station units") +
         " taken as separate machine and transformer: the classical method has no common correction");
+  const auto decaying = static_cast<std::size_t>(std::count_if(
+      n.synchronous_machines.begin(), n.synchronous_machines.end(), [](const SynchronousMachine& m) {
+        return m.is_in_service() &&
+               (m.xd_transient_percent || m.td_subtransient_s || m.td_transient_s || m.ta_s);
+      }));
+  if (decaying > 0)
+    warnings.push_back("transient reactances and time constants of " +
+                       counted(decaying, "machine", "machines") +
+                       " not used: this study follows no decay in time");
   const auto devices = live_count(n.breakers) + live_count(n.fuses);
   if (devices > 0)
     warnings.push_back(counted(devices, "breaker or fuse", "breakers and fuses") +

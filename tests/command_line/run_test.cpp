@@ -8,6 +8,7 @@
 #include <fstream>
 #include <iterator>
 #include <nlohmann/json.hpp>
+#include <set>
 #include <sstream>
 
 #include "reports/text_table.hpp"
@@ -174,14 +175,96 @@ BOOST_AUTO_TEST_CASE(json_carries_the_vocabulary_of_results) {
 }
 
 BOOST_AUTO_TEST_CASE(csv_rows_have_the_columns_of_their_head) {
-  for (const char* table : {"faults", "contributions"}) {
-    const Outcome o = kiloamp_run({"sweep", case_file("board_mill"), "--format", "csv", "--table", table});
+  for (const auto& more : std::vector<std::vector<std::string>>{
+           {"--table", "faults"},
+           {"--table", "contributions"},
+           {"--method", "iec60909"},
+           {"--method", "iec60909", "--case-kind", "both", "--table", "contributions"}}) {
+    std::vector<std::string> arguments{"sweep", case_file("board_mill"), "--format", "csv"};
+    arguments.insert(arguments.end(), more.begin(), more.end());
+    const Outcome o = kiloamp_run(arguments);
     BOOST_TEST(o.code == 0);
     const auto rows = lines(o.out);
     BOOST_TEST(rows.size() > 100U);
     const auto commas = [](const std::string& row) { return std::count(row.begin(), row.end(), ','); };
     for (const auto& row : rows) BOOST_TEST(commas(row) == commas(rows.front()), row);
   }
+}
+
+BOOST_AUTO_TEST_CASE(iec60909_says_what_it_did_and_gives_every_quantity) {
+  const Outcome o =
+      kiloamp_run({"sweep", case_file("eight_node_grid"), "--method", "iec60909", "--format", "json",
+                   "--case-kind", "both", "--intermediate", "--tmin", "0.05", "--duration", "0.5"});
+  BOOST_TEST(o.code == 0);
+  const auto json = nlohmann::json::parse(o.out);
+  BOOST_TEST(json["method"] == "iec60909");
+  BOOST_TEST(json["case_kind"] == "both");
+  BOOST_TEST(json["iec60909"]["edition"] == 2016);
+  BOOST_TEST(json["iec60909"]["kappa_method"] == "c");
+  BOOST_TEST(json["iec60909"]["tmin_s"] == 0.05);
+  BOOST_TEST(json["iec60909"]["duration_s"] == 0.5);
+  BOOST_TEST(json["faults"].size() == 10U * 4U * 2U);
+  std::set<std::string> factors, kinds;
+  for (const auto& c : json["corrections"]) factors.insert(c["factor"].get<std::string>());
+  BOOST_TEST((factors == std::set<std::string>{"K_G", "K_S", "K_SO", "K_T", "c"}));
+  std::size_t machines = 0;
+  for (const auto& fault : json["faults"]) {
+    kinds.insert(fault["case_kind"].get<std::string>());
+    for (const char* name : {"c", "ikss_ka", "skss_mva", "r_over_x", "kappa", "ip_ka", "ib_ka", "idc_ka",
+                             "ib_asymmetric_ka", "ik_ka", "m", "n", "ith_ka", "i2t_ka2s", "not_evaluated"})
+      BOOST_TEST(fault["iec60909"].contains(name), name);
+    if (fault["iec60909"].contains("machines")) machines += fault["iec60909"]["machines"].size();
+  }
+  BOOST_TEST((kinds == std::set<std::string>{"max", "min"}));
+  BOOST_TEST(machines > 10U);
+}
+
+BOOST_AUTO_TEST_CASE(iec60909_refuses_a_machine_without_power_factor) {
+  const Folder folder;
+  const fs::path path = folder.path / "plain.json";
+  std::ofstream(path) << R"({"format": "kiloamp-case", "version": 1, "frequency_hz": 50,
+    "buses": [{"id": "A", "nominal_kv": 10.5}],
+    "synchronous_machines": [{"id": "G", "bus": "A", "role": "generator", "rated_mva": 20, "rated_kv": 10.5,
+      "xd_subtransient_percent": 15, "ra_percent": 0.5}]})";
+  const Outcome o = kiloamp_run({"sweep", path.string(), "--method", "iec60909"});
+  BOOST_TEST(o.code == 2);
+  BOOST_TEST(o.out == "");
+  BOOST_TEST(o.err == path.string() +
+                          ": synchronous machine \"G\" (/synchronous_machines/0), power_factor: missing\n"
+                          "  IEC 60909-0 needs it for the correction factor of the machine\n"
+                          "  remedy: give the rated power factor of the nameplate\n");
+}
+
+BOOST_AUTO_TEST_CASE(options_that_do_not_go_together_are_refused) {
+  const std::string grid = case_file("eight_node_grid");
+  const auto complains = [](std::vector<std::string> arguments, const std::string& text) {
+    const Outcome o = kiloamp_run(std::move(arguments));
+    BOOST_TEST(o.code == 2);
+    BOOST_TEST(lines(o.err).front() == text);
+  };
+  complains(
+      {"sweep", grid, "--tmin", "0.1"},
+      "kiloamp: --edition, --tmin, --duration, --kappa-method and --intermediate go with --method iec60909");
+  complains(
+      {"sweep", grid, "--method", "iec60909", "--prefault", "1.05"},
+      "kiloamp: --method iec60909 has its own voltage, bolted faults and no shunts: leave out --prefault, "
+      "--phase-impedance, --earth-impedance and --shunts");
+  complains({"sweep", grid, "--method", "iec60909", "--intermediate"},
+            "kiloamp: --intermediate goes with --format json");
+}
+
+BOOST_AUTO_TEST_CASE(largest_and_smallest_stand_side_by_side) {
+  const Outcome o = kiloamp_run({"sweep", case_file("quarry_plant"), "--method", "iec60909", "--case-kind",
+                                 "both", "--fault", "3ph,lg", "--bus", "MAIN-11"});
+  BOOST_TEST(o.code == 0);
+  const auto all = lines(o.out);
+  const auto head =
+      std::find_if(all.begin(), all.end(), [](const auto& l) { return l.rfind("bus ", 0) == 0; });
+  BOOST_REQUIRE(head != all.end());
+  const char* expected[] = {"MAIN-11", "max", "min", "max", "min"};
+  BOOST_TEST((head + 2)->rfind(expected[0], 0) == 0U);
+  for (int row = 0; row < 4; ++row)
+    BOOST_TEST((head + 2 + row)->find(expected[row + 1]) != std::string::npos, *(head + 2 + row));
 }
 
 BOOST_AUTO_TEST_CASE(a_bad_case_leaves_the_output_file_alone) {

@@ -35,6 +35,27 @@ BOOST_AUTO_TEST_CASE(both_ways_agree_on_currents_contributions_and_voltages) {
   BOOST_TEST(faults > 5000);
 }
 
+// The corrected network of IEC 60909-0 is a network like any other.
+BOOST_AUTO_TEST_CASE(both_ways_agree_on_corrected_networks) {
+  std::size_t faults = 0;
+  for (std::uint32_t seed = 1; seed <= 120; ++seed) {
+    BOOST_TEST_CONTEXT("seed " << seed) {
+      StudyOptions options;
+      options.method = Method::iec60909;
+      options.case_kind = seed % 2 == 0 ? CaseKind::max : CaseKind::min;
+      options.iec60909.edition = seed % 4 < 2 ? iec60909::Edition::e2016 : iec60909::Edition::e2001;
+      Network network = random_network(seed);
+      for (SynchronousMachine& m : network.synchronous_machines)
+        if (!m.power_factor) m.power_factor = 0.85;
+      const Study study(std::move(network), options);
+      const CrossCheck check = cross_check(study);
+      faults += check.faults;
+      BOOST_TEST(check.largest <= kAgreement, check.largest << " in the " << check.quantity);
+    }
+  }
+  BOOST_TEST(faults > 1500);
+}
+
 // Contributions, closed switches included, sum to the fault current in every sequence; at other buses they
 // sum to nothing.
 BOOST_AUTO_TEST_CASE(currents_balance_at_every_bus) {

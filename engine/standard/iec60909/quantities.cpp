@@ -120,8 +120,9 @@ void Evaluation::find_converters() {
   if (sources.empty()) return;
   notes_.push_back(
       std::to_string(sources.size()) +
-      " full-converter sources as constant currents whose parts are added by magnitude (6.9), also "
-      "at tmin and in the steady state: obtain the maker's values");
+      (sources.size() == 1 ? " full-converter source taken as constant current"
+                           : " full-converter sources taken as constant currents") +
+      ", added by magnitude (6.9), also at tmin and in the steady state: obtain the maker's values");
   converter_pu_ = weighted_transfer_pu(*solver_, [&] {
     std::vector<std::pair<Node, double>> list;
     for (const Source& s : sources) list.emplace_back(s.node, s.current_pu);
