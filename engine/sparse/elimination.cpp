@@ -31,7 +31,10 @@ class Eliminator {
 
   void run(Index task) {
     watch_ = {};
+    grown_ = Size{};
+    unbounded_ = Size{};
     stack_.resize(factors_.layout.update_stack[at(task)]);
+    scan_input(task);
     for (const Index s : plan_.steps_of(task)) assemble(plan_.steps[at(s)]);
     if (task < plan_.tasks) {
       for (Index k = plan_.overflow_begin[at(task)]; k < plan_.overflow_begin[at(task) + 1]; ++k) {
@@ -57,54 +60,88 @@ class Eliminator {
         largest = std::max(largest, get_lane<kWidth>(largest_, lane));
       }
     }
+    for (int lane = 0; lane < kWidth; ++lane) {
+      watch_.grown[at(lane)] = get_lane<kWidth>(grown_, lane) + get_lane<kWidth>(unbounded_, lane);
+    }
     factors_.watches[at(task)] = watch_;
   }
 
  private:
-  void assemble(const EliminationPlan::Step& step) {
-    Size largest{};
-    Size finite{};
-    Index slot = plan_.column_begin[at(step.first)];
-    for (Index p = step.first; p < step.first + step.columns; ++p) {
-      Size size;
-      for (; slot < plan_.diagonal_slot(p); ++slot) {
-        Entry& entry = factors_.slots[at(slot)];
-        const Index edge = plan_.source[at(slot)];
-        if (edge < 0) {
-          clear(entry);
-          continue;
-        }
-        to_pack<Scalar, Lanes>(entry, values_.off_diagonal[at(edge)], 0);
+  /// Watches the task's share of the entries of A (the top's where there are no tasks), in the caller's
+  /// order: one after the other in memory, which also brings them near for assemble().
+  void scan_input(Index task) {
+    if (task > 0 && task == plan_.tasks) return;
+    const Index shares = std::max<Index>(plan_.tasks, 1);
+    const auto scan = [&](const std::vector<std::array<Scalar, static_cast<std::size_t>(Lanes)>>& entries) {
+      const auto share = [&](Index t) { return entries.size() * at(t) / at(shares); };
+      // Several sums and maxima side by side: each would wait for itself.
+      constexpr std::size_t kApart = 4;
+      Size largest[kApart] = {};
+      Size sum[kApart] = {};
+      const auto include = [&](std::size_t k, std::size_t place) {
+        Entry entry;
+        to_pack<Scalar, Lanes>(entry, entries[k], 0);
+        Size size;
         square_size(size, entry);
-        keep_larger<kWidth>(largest, size);
-        finite += size - size;
+        keep_larger<kWidth>(largest[place], size);
+        sum[place] += size;
+      };
+      std::size_t k = share(task);
+      const std::size_t end = share(task + 1);
+      for (; k + kApart <= end; k += kApart) {
+        for (std::size_t place = 0; place < kApart; ++place) include(k + place, place);
       }
-      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], values_.diagonal[at(plan_.row_of[at(p)])], 1);
-      square_size(size, factors_.slots[at(slot)]);
-      keep_larger<kWidth>(largest, size);
-      finite += size - size;
-      factors_.diagonal_squared[at(p)] = size;
-      ++slot;
+      for (; k < end; ++k) include(k, 0);
+      for (std::size_t place = 0; place < kApart; ++place) {
+        for (int lane = 0; lane < kWidth; ++lane) {
+          double& kept = watch_.largest_input_squared[at(lane)];
+          const double total = get_lane<kWidth>(sum[place], lane);
+          kept = std::max(kept, get_lane<kWidth>(largest[place], lane)) + (total - total);
+        }
+      }
+    };
+    scan(values_.diagonal);
+    scan(values_.off_diagonal);
+  }
+
+  void assemble(const EliminationPlan::Step& step) {
+    // Which slots are fill looks random to the machine: the choice is made by address, not by a jump.
+    const std::array<Scalar, static_cast<std::size_t>(Lanes)> none{};
+    const auto* const edges = values_.off_diagonal.data();
+    const auto* const rows = values_.diagonal.data();
+    const Index end = plan_.column_begin[at(step.first + step.columns)];
+    for (Index slot = plan_.column_begin[at(step.first)]; slot < end; ++slot) {
+      const Index source = plan_.source[at(slot)];
+      const bool diagonal = source < EliminationPlan::kFill;
+      const auto* from = diagonal ? rows : edges;
+      from += diagonal ? EliminationPlan::source_of_row(source) : source;
+      from = source == EliminationPlan::kFill ? &none : from;
+      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], *from, diagonal ? 1 : 0);
     }
-    for (int lane = 0; lane < kWidth; ++lane) {
-      double& kept = watch_.largest_input_squared[at(lane)];
-      kept = std::max(kept, get_lane<kWidth>(largest, lane)) + get_lane<kWidth>(finite, lane);
+    for (Index p = step.first; p < step.first + step.columns; ++p) {
+      square_size(factors_.diagonal_squared[at(p)], factors_.slots[at(plan_.diagonal_slot(p))]);
     }
   }
 
-  /// Marks pivot p, whose row has the largest |entry|^2 `size` beside the diagonal.
-  void watch(Index p, Size size, const Size& inverse_size) {
+  /// Marks pivot p, |p|^2 = `pivot_size`, whose row has the largest |entry|^2 `size` beside the diagonal.
+  void watch(Index p, Size size, const Size& pivot_size, const Size& inverse_size) {
+    const Size& before = factors_.diagonal_squared[at(p)];
     keep_larger<kWidth>(largest_, size);
-    keep_larger<kWidth>(size, factors_.diagonal_squared[at(p)]);
+    Size met = size;
+    keep_larger<kWidth>(met, pivot_size);
+    keep_larger<kWidth>(grown_, met - kSuspectGrowth * kSuspectGrowth * before);
+    keep_larger<kWidth>(size, before);
     size = (size + kTinySquared) * inverse_size;
     keep_larger<kWidth>(mark_, size);
+    unbounded_ += size - size;
   }
 
   template <int Count>
   void eliminate_column(Index p, Entry* column, const Index*& target) {
     Entry inverse;
+    Size pivot_size;
     Size inverse_size;
-    invert(inverse, column[Count], inverse_size);
+    invert(inverse, column[Count], pivot_size, inverse_size);
     Size size{};
     Entry scaled[Count > 0 ? Count : 1];
     for (int a = 0; a < Count; ++a) {
@@ -119,7 +156,7 @@ class Eliminator {
     for (int a = 0; a < Count; ++a) column[a] = scaled[a];
     column[Count] = inverse;
     target += Count * (Count + 1) / 2;
-    watch(p, size, inverse_size);
+    watch(p, size, pivot_size, inverse_size);
   }
 
   void eliminate_narrow(const EliminationPlan::Step& step) {
@@ -214,9 +251,10 @@ class Eliminator {
       const Index row = begin + q;
       pivot_row[q] = matrix.row(row);
       Entry pivot;
+      Size pivot_size;
       Size inverse_size;
       Front::get(pivot, pivot_row[q], row);
-      invert(inverse[q], pivot, inverse_size);
+      invert(inverse[q], pivot, pivot_size, inverse_size);
       for (Index r = begin; r < row; ++r) {
         const Stripe* const one[1] = {pivot_row[q]};
         Stripe factor[1];
@@ -224,7 +262,7 @@ class Eliminator {
         eliminate_from_row<1>(matrix.row(r), Front::stripes(r), one, factor);
       }
       store_column(front.first + front.rows + front.pivots - 1 - row, pivot_row[q], row, inverse[q],
-                   inverse_size);
+                   pivot_size, inverse_size);
     }
     for (Index r = 0; r < begin; ++r) {
       Stripe factor[Count];
@@ -241,7 +279,7 @@ class Eliminator {
     Front::spread(factor, scaled);
   }
 
-  void store_column(Index p, const Stripe* row, Index length, const Entry& inverse,
+  void store_column(Index p, const Stripe* row, Index length, const Entry& inverse, const Size& pivot_size,
                     const Size& inverse_size) {
     Entry* const column = factors_.slots.get() + plan_.column_begin[at(p)];
     Size size{};
@@ -254,7 +292,7 @@ class Eliminator {
       multiply(column[c], entry, inverse);
     }
     column[length] = inverse;
-    watch(p, size, inverse_size);
+    watch(p, size, pivot_size, inverse_size);
   }
 
   LaneFactors<Scalar, kWidth>& factors_;
@@ -266,6 +304,8 @@ class Eliminator {
   PivotWatch<kWidth> watch_;
   Size mark_{};
   Size largest_{};
+  Size grown_{};
+  Size unbounded_{};  // 0 while all marks are finite, else NaN
 };
 
 }  // namespace

@@ -27,6 +27,7 @@ class Planner {
     list_steps(task_of);
     write_programs(task_of);
     locate_edges(edges);
+    choose_spot(edges);
   }
 
   EliminationPlan take() { return std::move(plan_); }
@@ -238,10 +239,47 @@ class Planner {
   }
 
   void locate_edges(std::span<const Edge> edges) {
-    plan_.source.assign(at(plan_.slots()), -1);
+    plan_.source.assign(at(plan_.slots()), EliminationPlan::kFill);
+    plan_.edge_slot.resize(edges.size());
     for (std::size_t e = 0; e < edges.size(); ++e) {
       const auto [a, b] = std::minmax(plan_.position_of[at(edges[e].i)], plan_.position_of[at(edges[e].j)]);
-      plan_.source[at(plan_.find_slot(a, b))] = static_cast<Index>(e);
+      plan_.edge_slot[e] = plan_.find_slot(a, b);
+      plan_.source[at(plan_.edge_slot[e])] = static_cast<Index>(e);
+    }
+    plan_.row_slot.resize(at(plan_.order));
+    for (Index row = 0; row < plan_.order; ++row) {
+      const Index slot = plan_.diagonal_slot(plan_.position_of[at(row)]);
+      plan_.row_slot[at(row)] = slot;
+      plan_.source[at(slot)] = EliminationPlan::source_of_row(row);
+    }
+  }
+
+  /// The last column and one from the middle: a root, where all rounding arrives, and an ordinary row.
+  void choose_spot(std::span<const Edge> edges) {
+    auto& spot = plan_.spot;
+    std::vector<Index> place(at(plan_.order), -1);
+    const auto add_column = [&](Index position) {
+      if (place[at(position)] >= 0) return;
+      spot.columns.push_back(plan_.row_of[at(position)]);
+      for (Index p = position; p >= 0 && place[at(p)] < 0; p = plan_.parent(p)) {
+        place[at(p)] = static_cast<Index>(spot.path.size());
+        spot.path.push_back(p);
+        spot.unknowns.push_back(plan_.row_of[at(p)]);
+      }
+    };
+    if (plan_.order > 0) {
+      add_column(plan_.order - 1);
+      add_column(plan_.order / 2);
+    }
+    for (std::size_t e = 0; e < edges.size(); ++e) {
+      const auto add = [&](Index equation, Index unknown) {
+        const Index p = plan_.position_of[at(equation)];
+        if (place[at(p)] < 0) return;
+        spot.terms.push_back({place[at(p)], plan_.position_of[at(unknown)], static_cast<Index>(e)});
+        spot.unknowns.push_back(unknown);
+      };
+      add(edges[e].i, edges[e].j);
+      add(edges[e].j, edges[e].i);
     }
   }
 

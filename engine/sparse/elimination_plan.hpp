@@ -45,7 +45,13 @@ struct EliminationPlan {
   std::vector<Index> row_of;       // position -> row
   std::vector<Index> column_begin{0};
   std::vector<Index> rows;
-  std::vector<Index> source;  // slot -> edge whose value starts there; -1: none (fill or diagonal)
+  std::vector<Index> source;     // slot -> edge whose value starts there, kFill, or see source_of_row
+  std::vector<Index> edge_slot;  // edge -> slot
+  std::vector<Index> row_slot;   // row -> slot of its diagonal
+
+  static constexpr Index kFill = -1;
+  /// Source of the diagonal slot of a row.
+  static constexpr Index source_of_row(Index row) { return -2 - row; }
 
   std::vector<Step> steps;
   std::vector<Index> targets;
@@ -60,6 +66,21 @@ struct EliminationPlan {
   std::vector<Index> task_steps;
   std::vector<Index> overflow_begin{0};  // per task
   std::vector<Index> overflow_target;
+
+  /// The equations by which every factorisation is checked: those of all rows on the tree paths of two
+  /// columns of the inverse.
+  struct Spot {
+    struct Term {
+      Index place;     // the equation, counted along `path`
+      Index position;  // the unknown
+      Index edge;      // its coefficient
+    };
+    std::vector<Index> columns;   // rows
+    std::vector<Index> path;      // positions on the tree paths of `columns`
+    std::vector<Term> terms;      // off-diagonal ones
+    std::vector<Index> unknowns;  // rows
+  };
+  Spot spot;
 
   [[nodiscard]] Index slots() const { return column_begin.back(); }
   [[nodiscard]] std::size_t all_slots() const {

@@ -22,11 +22,12 @@ struct Factorisation<Scalar, Lanes>::Body {
 
   std::shared_ptr<const Analysis> analysis;
   LaneFactors<Scalar, kWidth> factors;
+  ProbeSolver<Scalar, Lanes> probe_solver;
   std::array<Accuracy, Lanes> accuracy{};
   std::array<std::unique_ptr<LaneRemedy<Scalar>>, Lanes> remedies{};
 
   explicit Body(std::shared_ptr<const Analysis> shared)
-      : analysis(std::move(shared)), factors(analysis->plan()) {}
+      : analysis(std::move(shared)), factors(analysis->plan()), probe_solver(factors) {}
 
   /// A solver by the lane's plain factors for LaneRemedy.
   typename LaneRemedy<Scalar>::PlainSolve plain_solve(int lane) const {
@@ -45,6 +46,7 @@ struct Factorisation<Scalar, Lanes>::Body {
   }
 
   void measure(const Values<Scalar, Lanes>& values);
+  void probe_in_full(const Values<Scalar, Lanes>& values);
   void mend(const Values<Scalar, Lanes>& values, int lane, std::span<const Index> rows);
   double remedy_residual(int lane, std::span<const Index> rows) const;
   [[noreturn]] void fail(int lane, const char* why) const;
@@ -77,8 +79,23 @@ void Factorisation<Scalar, Lanes>::Body::measure(const Values<Scalar, Lanes>& va
     accuracy[s].growth = input > 0 ? std::max(1.0, std::sqrt(met / input)) : 1;
     accuracy[s].worst_pivot_ratio = std::sqrt(worst);
   }
-  const std::vector<Index> rows = rows_to_probe(factors, Lanes, kSuspectGrowth);
-  const auto results = probe_columns<Scalar, Lanes>(factors, values, rows);
+  if (is_sound(factors, Lanes)) {
+    const auto results = probe_spot<Scalar, Lanes>(probe_solver, *factors.plan, values);
+    const bool settled = is_clean(results) && std::ranges::all_of(results, [](const ProbeResult& result) {
+                           return result.magnification <= kSingularMagnification;
+                         });
+    if (settled) {
+      for (std::size_t s = 0; s < at(Lanes); ++s) accuracy[s].residual = results[s].residual;
+      return;
+    }
+  }
+  probe_in_full(values);
+}
+
+template <typename Scalar, int Lanes>
+void Factorisation<Scalar, Lanes>::Body::probe_in_full(const Values<Scalar, Lanes>& values) {
+  const std::vector<Index> rows = rows_to_probe(factors, Lanes);
+  const auto results = probe_columns<Scalar, Lanes>(probe_solver, *factors.plan, values, rows);
   for (int s = 0; s < Lanes; ++s) {
     const ProbeResult& result = results[at(s)];
     accuracy[at(s)].residual = result.residual;

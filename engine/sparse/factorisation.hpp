@@ -22,8 +22,6 @@ inline constexpr double kTrustedResidual = 1e-9;
 inline constexpr double kRoundingMargin = 1e3;
 /// A larger mismatch after every remedy means that the matrix is singular to working precision.
 inline constexpr double kSingularResidual = 1e-6;
-/// A pivot that magnifies rounding by more than this has its own column probed (a sound network stays below).
-inline constexpr double kSuspectGrowth = 1e5;
 /// |a_kk z_kk| above this: row k cancelled down to rounding noise, so its island has no path to earth.
 inline constexpr double kSingularMagnification = 1e14;
 
@@ -44,11 +42,12 @@ struct Accuracy {
 
 /// A = L D L^T of each lane, and what follows from it.
 ///
-/// Elimination does not pivot. Trust is measured: the columns of the worst pivots and a few others are
-/// computed and A z - e_k is formed. A lane above kTrustedResidual (and above what rounding excuses) gets one
-/// step of refinement; if that does not help, Eigen's SparseLU, which pivots, takes the lane over. Both are
-/// right but slow for selected_inverse(): every column of that lane is then computed. No lane affects
-/// another, nor does the number of threads affect any bit.
+/// Elimination does not pivot. Trust is measured: where no pivot row grew, two columns are computed along
+/// their tree paths and A z - e_k is formed there; otherwise the columns of the worst pivots and a few others
+/// are computed and A z - e_k is formed in full. A lane above kTrustedResidual (and above what rounding
+/// excuses) gets one step of refinement; if that does not help, Eigen's SparseLU, which pivots, takes the
+/// lane over. Both are right but slow for selected_inverse(): every column of that lane is then computed. No
+/// lane affects another, nor does the number of threads affect any bit.
 ///
 /// @throws NumericalError  a lane is singular to working precision; names the row where it showed, and the
 /// lane.

@@ -42,8 +42,20 @@ class Inverter {
       } else {
         invert_front(step.front);
       }
-      deliver(step);
     }
+  }
+
+  /// Hands out share `share` of `shares`, in the caller's order: to read here and there is cheaper than to
+  /// write here and there.
+  void deliver(Index share, Index shares) {
+    const auto hand_out = [&](auto& to, const std::vector<Index>& slot_of) {
+      const std::size_t end = to.size() * at(share + 1) / at(shares);
+      for (std::size_t k = to.size() * at(share) / at(shares); k < end; ++k) {
+        from_pack<Scalar, Lanes>(to[k], slots_[at(slot_of[k])]);
+      }
+    };
+    hand_out(inverse_.diagonal, plan_.row_slot);
+    hand_out(inverse_.off_diagonal, plan_.edge_slot);
   }
 
  private:
@@ -231,17 +243,6 @@ class Inverter {
     Front::set(mine, row, diagonal);
   }
 
-  void deliver(const EliminationPlan::Step& step) {
-    Index slot = plan_.column_begin[at(step.first)];
-    for (Index p = step.first; p < step.first + step.columns; ++p) {
-      for (; slot < plan_.diagonal_slot(p); ++slot) {
-        const Index edge = plan_.source[at(slot)];
-        if (edge >= 0) from_pack<Scalar, Lanes>(inverse_.off_diagonal[at(edge)], slots_[slot]);
-      }
-      from_pack<Scalar, Lanes>(inverse_.diagonal[at(plan_.row_of[at(p)])], slots_[slot++]);
-    }
-  }
-
   const LaneFactors<Scalar, kWidth>& factors_;
   const EliminationPlan& plan_;
   Entry* slots_;
@@ -266,6 +267,8 @@ void invert_on_pattern(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
   for (auto& worker : workers) worker = std::make_unique<Worker>(factors, slots.get(), kept, inverse);
   workers[0]->run(plan.tasks);
   run_tasks(plan.tasks, threads, [&](int task, int worker) { workers[at(worker)]->run(task); });
+  const Index shares = std::max<Index>(plan.tasks, 1);
+  run_tasks(shares, threads, [&](int share, int worker) { workers[at(worker)]->deliver(share, shares); });
 }
 
 #define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                        \

@@ -32,6 +32,9 @@ struct FrontLayout {
 template <int Width>
 [[nodiscard]] FrontLayout lay_out_fronts(const EliminationPlan& plan);
 
+/// A pivot that magnifies rounding by more than this has its own column probed (a sound network stays below).
+inline constexpr double kSuspectGrowth = 1e5;
+
 /// The worst pivots of a task in each lane.
 ///
 /// The mark of a pivot d is max(|a|^2, |v|^2) / |d|^2 with a the diagonal entry it started from and v its
@@ -47,6 +50,8 @@ struct PivotWatch {
   std::array<std::array<Mark, kKept>, Lanes> worst{};
   std::array<double, Lanes> largest_squared{};        // largest |entry|^2 among pivot rows
   std::array<double, Lanes> largest_input_squared{};  // largest |entry of A|^2; NaN where A is not finite
+  /// 0 while all marks are finite and no |v|^2 or |d|^2 exceeds kSuspectGrowth^2 |a|^2; else positive or NaN.
+  std::array<double, Lanes> grown{};
 
   void offer(int lane, double squared, Index step) {
     auto& marks = worst[static_cast<std::size_t>(lane)];

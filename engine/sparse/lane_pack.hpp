@@ -202,16 +202,19 @@ inline void square_size(Doubles<Width>& size, const Pack<std::complex<double>, W
   size = a.re * a.re + a.im * a.im;
 }
 
-/// a = 1 / b, inverse_size = 1 / |b|^2 (infinite where b = 0)
+/// a = 1 / b, size = |b|^2, inverse_size = 1 / |b|^2 (infinite where b = 0)
 template <int Width>
-inline void invert(Pack<double, Width>& a, const Pack<double, Width>& b, Doubles<Width>& inverse_size) {
+inline void invert(Pack<double, Width>& a, const Pack<double, Width>& b, Doubles<Width>& size,
+                   Doubles<Width>& inverse_size) {
+  size = b.re * b.re;
   a.re = 1.0 / b.re;
   inverse_size = a.re * a.re;
 }
 template <int Width>
 inline void invert(Pack<std::complex<double>, Width>& a, const Pack<std::complex<double>, Width>& b,
-                   Doubles<Width>& inverse_size) {
-  inverse_size = 1.0 / (b.re * b.re + b.im * b.im);
+                   Doubles<Width>& size, Doubles<Width>& inverse_size) {
+  size = b.re * b.re + b.im * b.im;
+  inverse_size = 1.0 / size;
   a.im = -b.im * inverse_size;
   a.re = b.re * inverse_size;
 }

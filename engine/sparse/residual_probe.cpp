@@ -10,13 +10,11 @@ namespace {
 
 /// Suspects probed at most: a handful of bad spots is found, a bad matrix needs no more proof.
 constexpr std::size_t kMostSuspects = 14;
-/// Below this the share of rounding in a mismatch is not worth measuring.
-constexpr double kCleanResidual = 1e-10;
 constexpr double kInfinite = std::numeric_limits<double>::infinity();
 
 std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 
-constexpr int kBlock = 2;
+constexpr int kBlock = kProbeBlock;
 
 double parts(double value) { return std::abs(value); }
 double parts(std::complex<double> value) { return std::abs(value.real()) + std::abs(value.imag()); }
@@ -42,26 +40,15 @@ class Prober {
  public:
   using Entry = std::array<Scalar, Lanes>;
 
-  Prober(const LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values)
-      : plan_(*factors.plan), values_(values), solver_(factors), sums_(at(plan_.order)) {}
+  Prober(ProbeSolver<Scalar, Lanes>& solver, const EliminationPlan& plan, const Values<Scalar, Lanes>& values)
+      : plan_(plan), values_(values), solver_(solver) {}
 
-  void probe(std::span<const Index> rows, std::array<ProbeResult, Lanes>& results) {
-    Entry one;
-    one.fill(Scalar(1));
-    solver_.clear();
-    const auto side = [](std::size_t r) { return static_cast<int>(r % kBlock); };
-    for (std::size_t r = 0; r < rows.size(); ++r) solver_.put(side(r), rows[r], one);
+  void probe(std::span<const Index> rows) {
+    put(rows);
     solver_.solve();
-    std::fill(sums_.begin(), sums_.end(), Row{});
-    for (std::size_t c = 0; c < rows.size(); ++c) {
-      for (auto& sum : sums_[at(plan_.position_of[at(rows[c])])]) set_lane<kBlock>(sum.re, side(c), -1);
-      const Entry z = solver_.get(side(c), rows[c]);
-      for (std::size_t s = 0; s < at(Lanes); ++s) {
-        results[s].include({0, 0, or_infinite(parts(z[s] * values_.diagonal[at(rows[c])][s]))});
-      }
-    }
-    std::array<Doubles<kBlock>, static_cast<std::size_t>(Lanes)> worst{};
-    std::array<Doubles<kBlock>, static_cast<std::size_t>(Lanes)> finite{};
+    measure_magnification(rows);
+    sums_.assign(at(plan_.order), Row{});
+    for (std::size_t c = 0; c < rows.size(); ++c) start_with_unit(at(plan_.position_of[at(rows[c])]), c);
     for (Index p = 0; p < plan_.order; ++p) {
       gather(p, values_.diagonal[at(plan_.row_of[at(p)])], p);
       for (Index slot = plan_.column_begin[at(p)]; slot < plan_.diagonal_slot(p); ++slot) {
@@ -70,19 +57,30 @@ class Prober {
         gather(p, values_.off_diagonal[at(edge)], plan_.rows[at(slot)]);
         gather(plan_.rows[at(slot)], values_.off_diagonal[at(edge)], p);
       }
-      for (std::size_t s = 0; s < at(Lanes); ++s) {
-        const Doubles<kBlock> mismatch = parts(sums_[at(p)][s]);
-        worst[s] = larger(worst[s], mismatch);
-        finite[s] += mismatch - mismatch;
+    }
+    measure_mismatch();
+  }
+
+  void probe_spot() {
+    const auto& spot = plan_.spot;
+    put(spot.columns);
+    solver_.solve_at(spot.unknowns);
+    measure_magnification(spot.columns);
+    sums_.assign(spot.path.size(), Row{});
+    for (std::size_t k = 0; k < spot.path.size(); ++k) {
+      const Index row = plan_.row_of[at(spot.path[k])];
+      for (std::size_t c = 0; c < spot.columns.size(); ++c) {
+        if (spot.columns[c] == row) start_with_unit(k, c);
       }
+      gather(static_cast<Index>(k), values_.diagonal[at(row)], spot.path[k]);
     }
-    for (std::size_t s = 0; s < at(Lanes); ++s) {
-      for (int c = 0; c < kBlock; ++c) results[s].include({or_infinite(worst[s][c] + finite[s][c]), 0, 0});
-    }
+    for (const auto& term : spot.terms)
+      gather(term.place, values_.off_diagonal[at(term.edge)], term.position);
+    measure_mismatch();
   }
 
   /// Largest (|A| |z|)_i of the columns probed last.
-  void measure_rounding(std::array<ProbeResult, Lanes>& results) const {
+  void measure_rounding() {
     for (std::size_t s = 0; s < at(Lanes); ++s) {
       std::vector<Doubles<kBlock>> sizes(at(plan_.order), Doubles<kBlock>{});
       for (Index p = 0; p < plan_.order; ++p) {
@@ -96,13 +94,52 @@ class Prober {
           sizes[at(p)] += a * parts(solver_.at_position(other)[s]);
           sizes[at(other)] += a * mine;
         }
-        for (int c = 0; c < kBlock; ++c) results[s].include({0, or_infinite(sizes[at(p)][c]), 0});
+        for (int c = 0; c < kBlock; ++c) results_[s].include({0, or_infinite(sizes[at(p)][c]), 0});
       }
     }
   }
 
+  [[nodiscard]] const std::array<ProbeResult, Lanes>& results() const { return results_; }
+
  private:
-  using Row = typename ColumnSolver<Scalar, Lanes, kBlock>::Row;
+  using Row = typename ProbeSolver<Scalar, Lanes>::Row;
+
+  static int side(std::size_t c) { return static_cast<int>(c % kBlock); }
+
+  void put(std::span<const Index> rows) {
+    Entry one;
+    one.fill(Scalar(1));
+    solver_.clear();
+    for (std::size_t c = 0; c < rows.size(); ++c) solver_.put(side(c), rows[c], one);
+  }
+
+  void measure_magnification(std::span<const Index> rows) {
+    for (std::size_t c = 0; c < rows.size(); ++c) {
+      const Entry z = solver_.get(side(c), rows[c]);
+      for (std::size_t s = 0; s < at(Lanes); ++s) {
+        results_[s].include({0, 0, or_infinite(parts(z[s] * values_.diagonal[at(rows[c])][s]))});
+      }
+    }
+  }
+
+  void start_with_unit(std::size_t place, std::size_t c) {
+    for (auto& sum : sums_[place]) set_lane<kBlock>(sum.re, side(c), -1);
+  }
+
+  void measure_mismatch() {
+    std::array<Doubles<kBlock>, static_cast<std::size_t>(Lanes)> worst{};
+    std::array<Doubles<kBlock>, static_cast<std::size_t>(Lanes)> finite{};
+    for (const Row& sum : sums_) {
+      for (std::size_t s = 0; s < at(Lanes); ++s) {
+        const Doubles<kBlock> mismatch = parts(sum[s]);
+        worst[s] = larger(worst[s], mismatch);
+        finite[s] += mismatch - mismatch;
+      }
+    }
+    for (std::size_t s = 0; s < at(Lanes); ++s) {
+      for (int c = 0; c < kBlock; ++c) results_[s].include({or_infinite(worst[s][c] + finite[s][c]), 0, 0});
+    }
+  }
 
   void gather(Index to, const Entry& a, Index from) {
     const Row& x = solver_.at_position(from);
@@ -111,8 +148,9 @@ class Prober {
 
   const EliminationPlan& plan_;
   const Values<Scalar, Lanes>& values_;
-  ColumnSolver<Scalar, Lanes, kBlock> solver_;
-  std::vector<Row> sums_;
+  ProbeSolver<Scalar, Lanes>& solver_;
+  std::array<ProbeResult, Lanes> results_{};
+  std::vector<Row> sums_;  // A z - b
 };
 
 }  // namespace
@@ -124,21 +162,37 @@ void ProbeResult::include(const ProbeResult& other) {
 }
 
 template <typename Scalar, int Lanes>
-std::array<ProbeResult, Lanes> probe_columns(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
+std::array<ProbeResult, Lanes> probe_columns(ProbeSolver<Scalar, Lanes>& solver, const EliminationPlan& plan,
                                              const Values<Scalar, Lanes>& values,
                                              std::span<const Index> rows) {
-  std::array<ProbeResult, Lanes> results{};
-  Prober<Scalar, Lanes> prober(factors, values);
-  if (rows.empty()) return results;
-  prober.probe(rows, results);
-  const bool doubtful =
-      std::ranges::any_of(results, [](const auto& one) { return !(one.residual <= kCleanResidual); });
-  if (doubtful) prober.measure_rounding(results);
-  return results;
+  Prober<Scalar, Lanes> prober(solver, plan, values);
+  if (rows.empty()) return prober.results();
+  prober.probe(rows);
+  if (!is_clean(prober.results())) prober.measure_rounding();
+  return prober.results();
+}
+
+template <typename Scalar, int Lanes>
+std::array<ProbeResult, Lanes> probe_spot(ProbeSolver<Scalar, Lanes>& solver, const EliminationPlan& plan,
+                                          const Values<Scalar, Lanes>& values) {
+  Prober<Scalar, Lanes> prober(solver, plan, values);
+  prober.probe_spot();
+  return prober.results();
 }
 
 template <typename Scalar, int Width>
-std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes, double suspect) {
+bool is_sound(const LaneFactors<Scalar, Width>& factors, int lanes) {
+  for (const auto& watch : factors.watches) {
+    for (int lane = 0; lane < lanes; ++lane) {
+      if (!(watch.grown[at(lane)] == 0)) return false;
+      if (watch.worst[at(lane)][0].squared > kSuspectGrowth * kSuspectGrowth) return false;
+    }
+  }
+  return true;
+}
+
+template <typename Scalar, int Width>
+std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes) {
   struct Suspect {
     double mark;
     Index step;
@@ -148,7 +202,8 @@ std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int 
   for (const auto& watch : factors.watches) {
     for (int lane = 0; lane < lanes; ++lane) {
       for (const auto& mark : watch.worst[at(lane)]) {
-        if (mark.squared > suspect * suspect) suspects.push_back({mark.squared, mark.step, lane});
+        if (mark.squared > kSuspectGrowth * kSuspectGrowth)
+          suspects.push_back({mark.squared, mark.step, lane});
       }
     }
   }
@@ -156,16 +211,13 @@ std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int 
                    [](const auto& a, const auto& b) { return a.mark > b.mark; });
   const EliminationPlan& plan = *factors.plan;
   std::vector<Index> rows;
-  const auto add = [&](Index position) {
-    const Index row = plan.row_of[at(position)];
+  const auto add = [&](Index row) {
     if (std::find(rows.begin(), rows.end(), row) == rows.end()) rows.push_back(row);
   };
-  if (plan.order == 0) return rows;
   for (const Suspect& one : suspects) {
-    if (rows.size() < kMostSuspects) add(worst_pivot(factors, one.step, one.lane));
+    if (rows.size() < kMostSuspects) add(plan.row_of[at(worst_pivot(factors, one.step, one.lane))]);
   }
-  add(plan.order - 1);
-  add(plan.order / 2);
+  for (const Index row : plan.spot.columns) add(row);
   return rows;
 }
 
@@ -178,10 +230,12 @@ Index worst_row(const LaneFactors<Scalar, Width>& factors, int lane) {
   return worst.step < 0 ? 0 : factors.plan->row_of[at(worst_pivot(factors, worst.step, lane))];
 }
 
-#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                           \
-  template std::array<ProbeResult, Lanes> probe_columns<Scalar, Lanes>(              \
-      const LaneFactors<Scalar, padded_width(Lanes)>&, const Values<Scalar, Lanes>&, \
-      std::span<const Index>);
+#define KILOAMP_INSTANTIATE(Scalar, Lanes)                                               \
+  template std::array<ProbeResult, Lanes> probe_columns<Scalar, Lanes>(                  \
+      ProbeSolver<Scalar, Lanes>&, const EliminationPlan&, const Values<Scalar, Lanes>&, \
+      std::span<const Index>);                                                           \
+  template std::array<ProbeResult, Lanes> probe_spot<Scalar, Lanes>(                     \
+      ProbeSolver<Scalar, Lanes>&, const EliminationPlan&, const Values<Scalar, Lanes>&);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)
 KILOAMP_INSTANTIATE(std::complex<double>, 4)
@@ -189,8 +243,9 @@ KILOAMP_INSTANTIATE(double, 1)
 KILOAMP_INSTANTIATE(double, 2)
 KILOAMP_INSTANTIATE(double, 4)
 #undef KILOAMP_INSTANTIATE
-#define KILOAMP_INSTANTIATE(Scalar, Width)                                                                  \
-  template std::vector<Index> rows_to_probe<Scalar, Width>(const LaneFactors<Scalar, Width>&, int, double); \
+#define KILOAMP_INSTANTIATE(Scalar, Width)                                                          \
+  template std::vector<Index> rows_to_probe<Scalar, Width>(const LaneFactors<Scalar, Width>&, int); \
+  template bool is_sound<Scalar, Width>(const LaneFactors<Scalar, Width>&, int);                    \
   template Index worst_row<Scalar, Width>(const LaneFactors<Scalar, Width>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 4)

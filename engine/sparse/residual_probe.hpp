@@ -1,6 +1,8 @@
 // How well computed columns of the inverse satisfy A z = e_k.
 #pragma once
+#include <algorithm>
 #include <array>
+#include <cstddef>
 #include <span>
 
 #include "engine/sparse/column_solver.hpp"
@@ -18,17 +20,42 @@ struct ProbeResult {
   void include(const ProbeResult& other);
 };
 
+/// Below this the share of rounding in a mismatch is not worth measuring.
+inline constexpr double kCleanResidual = 1e-10;
+/// True where no lane has a larger mismatch.
+template <std::size_t Lanes>
+[[nodiscard]] bool is_clean(const std::array<ProbeResult, Lanes>& results) {
+  return std::ranges::all_of(results, [](const auto& one) { return one.residual <= kCleanResidual; });
+}
+
+/// Right-hand sides of a probe.
+inline constexpr int kProbeBlock = 2;
+template <typename Scalar, int Lanes>
+using ProbeSolver = ColumnSolver<Scalar, Lanes, kProbeBlock>;
+
 /// Solves for the columns `rows`, in two sums that take turns, and measures each lane. A bad column shows in
 /// the sum as it shows alone, and one pass over the factors serves however many are suspect.
 template <typename Scalar, int Lanes>
-[[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(
-    const LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
-    std::span<const Index> rows);
+[[nodiscard]] std::array<ProbeResult, Lanes> probe_columns(ProbeSolver<Scalar, Lanes>& solver,
+                                                           const EliminationPlan& plan,
+                                                           const Values<Scalar, Lanes>& values,
+                                                           std::span<const Index> rows);
 
-/// Rows to probe: those of suspect pivots in any lane (mark above `suspect`^2) and two ordinary ones.
+/// The same for the columns and equations of the plan's spot: what such a column costs does not grow with the
+/// matrix. Enough where no pivot row grew: the equations elsewhere have nothing that could be wrong.
+template <typename Scalar, int Lanes>
+[[nodiscard]] std::array<ProbeResult, Lanes> probe_spot(ProbeSolver<Scalar, Lanes>& solver,
+                                                        const EliminationPlan& plan,
+                                                        const Values<Scalar, Lanes>& values);
+
+/// True where no pivot in any lane is suspect and no pivot row outgrew its own diagonal entry: nowhere has
+/// elimination magnified rounding by more than kSuspectGrowth.
 template <typename Scalar, int Width>
-[[nodiscard]] std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes,
-                                               double suspect);
+[[nodiscard]] bool is_sound(const LaneFactors<Scalar, Width>& factors, int lanes);
+
+/// Rows to probe: those of suspect pivots in any lane and those of the plan's spot.
+template <typename Scalar, int Width>
+[[nodiscard]] std::vector<Index> rows_to_probe(const LaneFactors<Scalar, Width>& factors, int lanes);
 
 /// The row of the worst pivot of a lane.
 template <typename Scalar, int Width>
