@@ -25,15 +25,24 @@ class Eliminator {
   using Stripe = typename Front::Stripe;
   using Size = Doubles<kWidth>;
 
-  Eliminator(LaneFactors<Scalar, kWidth>& factors, const Values<Scalar, Lanes>& values,
-             std::vector<Stripe>& kept)
-      : factors_(factors), plan_(*factors.plan), values_(values), kept_(kept) {}
+  using Workspace = EliminationWorkspace<Scalar>;
+
+  Eliminator(LaneFactors<Scalar, kWidth>& factors, const Values<Scalar, Lanes>& values, Workspace& workspace,
+             typename Workspace::Worker& worker)
+      : factors_(factors),
+        plan_(*factors.plan),
+        values_(values),
+        kept_(workspace.kept),
+        front_(worker.front),
+        stack_(worker.stack) {}
 
   void run(Index task) {
     watch_ = {};
     grown_ = Size{};
     unbounded_ = Size{};
-    stack_.resize(factors_.layout.update_stack[at(task)]);
+    if (stack_.size() < factors_.layout.update_stack[at(task)]) {
+      stack_.resize(factors_.layout.update_stack[at(task)]);
+    }
     scan_input(task);
     for (const Index s : plan_.steps_of(task)) assemble(plan_.steps[at(s)]);
     if (task < plan_.tasks) {
@@ -299,8 +308,8 @@ class Eliminator {
   const EliminationPlan& plan_;
   const Values<Scalar, Lanes>& values_;
   std::vector<Stripe>& kept_;
-  std::vector<Stripe> front_;
-  std::vector<Stripe> stack_;
+  std::vector<Stripe>& front_;
+  std::vector<Stripe>& stack_;
   PivotWatch<kWidth> watch_;
   Size mark_{};
   Size largest_{};
@@ -311,15 +320,17 @@ class Eliminator {
 }  // namespace
 
 template <typename Scalar, int Lanes>
-void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
-               int threads) {
+void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, EliminationWorkspace<Scalar>& workspace,
+               const Values<Scalar, Lanes>& values, int threads) {
   using Worker = Eliminator<Scalar, Lanes>;
-  std::vector<typename Worker::Stripe> kept(factors.layout.kept);
+  workspace.kept.resize(factors.layout.kept);
   const int tasks = factors.plan->tasks;
-  std::vector<std::unique_ptr<Worker>> workers(at(std::max(threads, 1)));
-  for (auto& worker : workers) worker = std::make_unique<Worker>(factors, values, kept);
-  run_tasks(tasks, threads, [&](int task, int worker) { workers[at(worker)]->run(task); });
-  workers[0]->run(tasks);
+  const std::size_t count = at(std::max(threads, 1));
+  if (workspace.workers.size() < count) workspace.workers.resize(count);
+  std::vector<Worker> workers;
+  for (auto& worker : workspace.workers) workers.emplace_back(factors, values, workspace, worker);
+  run_tasks(tasks, threads, [&](int task, int worker) { workers[at(worker)].run(task); });
+  workers[0].run(tasks);
 }
 
 template <typename Scalar, int Width>
@@ -345,7 +356,7 @@ Index worst_pivot(const LaneFactors<Scalar, Width>& factors, Index step_number, 
 
 #define KILOAMP_INSTANTIATE(Scalar, Lanes)                                          \
   template void eliminate<Scalar, Lanes>(LaneFactors<Scalar, padded_width(Lanes)>&, \
-                                         const Values<Scalar, Lanes>&, int);
+                                         EliminationWorkspace<Scalar>&, const Values<Scalar, Lanes>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)
 KILOAMP_INSTANTIATE(std::complex<double>, 4)

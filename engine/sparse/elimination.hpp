@@ -16,6 +16,17 @@ struct Values {
   std::vector<std::array<Scalar, Lanes>> off_diagonal;
 };
 
+/// Memory of one elimination at a time, worth keeping.
+template <typename Scalar>
+struct EliminationWorkspace {
+  struct Worker {
+    std::vector<Pack<Scalar, 4>> front;
+    std::vector<Pack<Scalar, 4>> stack;
+  };
+  std::vector<Pack<Scalar, 4>> kept;
+  std::vector<Worker> workers;
+};
+
 /// Fills factors.slots with L and 1 / D of `values`, and factors.watches.
 ///
 /// Symmetric, not Hermitian: no entry is conjugated. Zero pivots are not avoided: they give infinite marks in
@@ -26,8 +37,8 @@ struct Values {
 /// Differs:
 ///         rows of at most three neighbours bypass the fronts, pivots stand last in a front.
 template <typename Scalar, int Lanes>
-void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, const Values<Scalar, Lanes>& values,
-               int threads);
+void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, EliminationWorkspace<Scalar>& workspace,
+               const Values<Scalar, Lanes>& values, int threads);
 
 /// The position with the worst mark among the columns of `step` in `lane`.
 template <typename Scalar, int Width>

@@ -3,6 +3,7 @@
 #include <cassert>
 #include <cmath>
 #include <limits>
+#include <mutex>
 #include <string>
 
 #include "engine/sparse/lane_remedy.hpp"
@@ -23,6 +24,9 @@ struct Factorisation<Scalar, Lanes>::Body {
   std::shared_ptr<const Analysis> analysis;
   LaneFactors<Scalar, kWidth> factors;
   ProbeSolver<Scalar, Lanes> probe_solver;
+  EliminationWorkspace<Scalar> elimination_workspace;
+  std::mutex inverse_guard;  // selected_inverse() is const: several threads may ask at once
+  InverseWorkspace<Scalar, kWidth> inverse_workspace;
   std::array<Accuracy, Lanes> accuracy{};
   std::array<std::unique_ptr<LaneRemedy<Scalar>>, Lanes> remedies{};
 
@@ -162,7 +166,7 @@ template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::refactorise(const Values<Scalar, Lanes>& values, int threads) {
   assert(values.diagonal.size() == at(body_->analysis->order()));
   assert(values.off_diagonal.size() == body_->analysis->edges().size());
-  eliminate<Scalar, Lanes>(body_->factors, values, threads);
+  eliminate<Scalar, Lanes>(body_->factors, body_->elimination_workspace, values, threads);
   body_->measure(values);
 }
 
@@ -186,7 +190,10 @@ typename Factorisation<Scalar, Lanes>::SelectedInverse Factorisation<Scalar, Lan
 
 template <typename Scalar, int Lanes>
 void Factorisation<Scalar, Lanes>::selected_inverse(SelectedInverse& out, int threads) const {
-  invert_on_pattern<Scalar, Lanes>(body_->factors, out, threads);
+  {
+    const std::lock_guard lock(body_->inverse_guard);
+    invert_on_pattern<Scalar, Lanes>(body_->factors, body_->inverse_workspace, out, threads);
+  }
   for (int s = 0; s < Lanes; ++s) {
     const auto& remedy = body_->remedies[at(s)];
     if (!remedy) continue;

@@ -22,9 +22,17 @@ class Inverter {
   using Front = FrontMatrix<Scalar, kWidth>;
   using Stripe = typename Front::Stripe;
 
-  Inverter(const LaneFactors<Scalar, kWidth>& factors, Entry* slots, std::vector<Stripe>& kept,
-           InverseOnPattern<Scalar, Lanes>& inverse)
-      : factors_(factors), plan_(*factors.plan), slots_(slots), kept_(kept), inverse_(inverse) {}
+  using Workspace = InverseWorkspace<Scalar, kWidth>;
+
+  Inverter(const LaneFactors<Scalar, kWidth>& factors, Workspace& workspace,
+           typename Workspace::Worker& worker, InverseOnPattern<Scalar, Lanes>& inverse)
+      : factors_(factors),
+        plan_(*factors.plan),
+        slots_(workspace.slots.get()),
+        kept_(workspace.kept),
+        inverse_(inverse),
+        stack_(worker.stack),
+        scratch_(worker.scratch) {}
 
   void run(Index task) {
     if (stack_.size() < factors_.layout.inverse_stack[at(task)]) {
@@ -248,31 +256,37 @@ class Inverter {
   Entry* slots_;
   std::vector<Stripe>& kept_;
   InverseOnPattern<Scalar, Lanes>& inverse_;
-  std::vector<Stripe> stack_;
-  std::vector<Stripe> scratch_;
+  std::vector<Stripe>& stack_;
+  std::vector<Stripe>& scratch_;
 };
 
 }  // namespace
 
 template <typename Scalar, int Lanes>
 void invert_on_pattern(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
+                       InverseWorkspace<Scalar, padded_width(Lanes)>& workspace,
                        InverseOnPattern<Scalar, Lanes>& inverse, int threads) {
   using Worker = Inverter<Scalar, Lanes>;
   const EliminationPlan& plan = *factors.plan;
   inverse.diagonal.resize(at(plan.order));
   inverse.off_diagonal.resize(plan.edges);
-  const auto slots = std::make_unique_for_overwrite<typename Worker::Entry[]>(plan.all_slots());
-  std::vector<typename Worker::Stripe> kept(factors.layout.kept);
-  std::vector<std::unique_ptr<Worker>> workers(at(std::max(threads, 1)));
-  for (auto& worker : workers) worker = std::make_unique<Worker>(factors, slots.get(), kept, inverse);
-  workers[0]->run(plan.tasks);
-  run_tasks(plan.tasks, threads, [&](int task, int worker) { workers[at(worker)]->run(task); });
+  if (!workspace.slots) {
+    workspace.slots = std::make_unique_for_overwrite<typename Worker::Entry[]>(plan.all_slots());
+    workspace.kept.resize(factors.layout.kept);
+  }
+  const std::size_t count = at(std::max(threads, 1));
+  if (workspace.workers.size() < count) workspace.workers.resize(count);
+  std::vector<Worker> workers;
+  for (auto& worker : workspace.workers) workers.emplace_back(factors, workspace, worker, inverse);
+  workers[0].run(plan.tasks);
+  run_tasks(plan.tasks, threads, [&](int task, int worker) { workers[at(worker)].run(task); });
   const Index shares = std::max<Index>(plan.tasks, 1);
-  run_tasks(shares, threads, [&](int share, int worker) { workers[at(worker)]->deliver(share, shares); });
+  run_tasks(shares, threads, [&](int share, int worker) { workers[at(worker)].deliver(share, shares); });
 }
 
 #define KILOAMP_INSTANTIATE(Scalar, Lanes)                                                        \
   template void invert_on_pattern<Scalar, Lanes>(const LaneFactors<Scalar, padded_width(Lanes)>&, \
+                                                 InverseWorkspace<Scalar, padded_width(Lanes)>&,  \
                                                  InverseOnPattern<Scalar, Lanes>&, int);
 KILOAMP_INSTANTIATE(std::complex<double>, 1)
 KILOAMP_INSTANTIATE(std::complex<double>, 3)
