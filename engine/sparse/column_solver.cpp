@@ -7,6 +7,11 @@
 #include <ranges>
 #include <type_traits>
 
+#include "engine/sparse/wide_registers.hpp"
+#if KILOAMP_WIDE_REGISTERS
+#include <immintrin.h>
+#endif
+
 namespace kiloamp::sparse {
 namespace {
 
@@ -25,6 +30,67 @@ inline void subtract_scaled(Pack<std::complex<double>, Block>& to, std::complex<
   to.im -= factor.real() * x.im;
   to.im -= factor.imag() * x.re;
 }
+
+/// What one backward pass works on.
+template <typename Entry, typename Row>
+struct BackwardPass {
+  const EliminationPlan& plan;
+  const Entry* slots;
+  Row* x;
+  const std::vector<Index>& stamps;  // equal to `stamp` where there is a right-hand side
+  Index stamp;
+};
+
+#if KILOAMP_WIDE_REGISTERS
+/// Four right-hand sides of complex numbers are two registers; all sums stay in registers. Lanes outside
+/// [First, End) get zeros.
+template <int Lanes, int First, int End, typename Entry, typename Row>
+KILOAMP_WIDE inline void backward_wide(const BackwardPass<Entry, Row>& pass, Index p) {
+  constexpr int kWidth = padded_width(Lanes);
+  static_assert(sizeof(Entry) == 2 * kWidth * sizeof(double) && sizeof(Row) == 8 * Lanes * sizeof(double));
+  const Index begin = pass.plan.column_begin[at(p)];
+  const Index end = pass.plan.diagonal_slot(p);
+  __m256d re[Lanes];
+  __m256d im[Lanes];
+  for (int s = 0; s < Lanes; ++s) re[s] = im[s] = _mm256_setzero_pd();
+  const auto* factor = reinterpret_cast<const double*>(pass.slots + begin);
+  for (Index slot = begin; slot < end; ++slot, factor += 2 * kWidth) {
+    const auto* const x = reinterpret_cast<const double*>(pass.x + pass.plan.rows[at(slot)]);
+    for (int s = First; s < End; ++s) {
+      const __m256d factor_re = _mm256_broadcast_sd(factor + s);
+      const __m256d factor_im = _mm256_broadcast_sd(factor + kWidth + s);
+      const __m256d x_re = _mm256_loadu_pd(x + 8 * s);
+      const __m256d x_im = _mm256_loadu_pd(x + 8 * s + 4);
+      re[s] = _mm256_fnmadd_pd(factor_re, x_re, re[s]);
+      im[s] = _mm256_fnmadd_pd(factor_re, x_im, im[s]);
+      re[s] = _mm256_fmadd_pd(factor_im, x_im, re[s]);
+      im[s] = _mm256_fnmadd_pd(factor_im, x_re, im[s]);
+    }
+  }
+  auto* const mine = reinterpret_cast<double*>(pass.x + p);
+  if (pass.stamps[at(p)] == pass.stamp) {
+    for (int s = First; s < End; ++s) {
+      const __m256d factor_re = _mm256_broadcast_sd(factor + s);
+      const __m256d factor_im = _mm256_broadcast_sd(factor + kWidth + s);
+      const __m256d x_re = _mm256_loadu_pd(mine + 8 * s);
+      const __m256d x_im = _mm256_loadu_pd(mine + 8 * s + 4);
+      re[s] = _mm256_fmadd_pd(factor_re, x_re, re[s]);
+      im[s] = _mm256_fmadd_pd(factor_re, x_im, im[s]);
+      re[s] = _mm256_fnmadd_pd(factor_im, x_im, re[s]);
+      im[s] = _mm256_fmadd_pd(factor_im, x_re, im[s]);
+    }
+  }
+  for (int s = 0; s < Lanes; ++s) {
+    _mm256_storeu_pd(mine + 8 * s, re[s]);
+    _mm256_storeu_pd(mine + 8 * s + 4, im[s]);
+  }
+}
+
+template <int Lanes, int First, int End, typename Entry, typename Row, typename Range>
+KILOAMP_WIDE void backward_wide(const BackwardPass<Entry, Row>& pass, const Range& positions) {
+  for (const Index p : positions) backward_wide<Lanes, First, End>(pass, p);
+}
+#endif
 
 }  // namespace
 
@@ -110,6 +176,16 @@ template <typename Scalar, int Lanes, int Block>
 template <typename Range>
 void ColumnSolver<Scalar, Lanes, Block>::backward_all(const Range& positions) {
   const auto with = [&]<int Only>(std::integral_constant<int, Only>) {
+#if KILOAMP_WIDE_REGISTERS
+    if constexpr (kIsComplex<Scalar> && Block == 4) {
+      if (has_wide_registers()) {
+        const BackwardPass<Pack<Scalar, padded_width(Lanes)>, Row> pass{*plan_, factors_->slots.get(),
+                                                                        x_.get(), forward_stamp_, stamp_};
+        backward_wide<Lanes, (Only < 0 ? 0 : Only), (Only < 0 ? Lanes : Only + 1)>(pass, positions);
+        return;
+      }
+    }
+#endif
     for (const Index p : positions) backward<Only>(p);
   };
   if (std::count(filled_.begin(), filled_.end(), true) == 1) {

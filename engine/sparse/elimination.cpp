@@ -114,18 +114,21 @@ class Eliminator {
   }
 
   void assemble(const EliminationPlan::Step& step) {
-    // Which slots are fill looks random to the machine: the choice is made by address, not by a jump.
+    // Where a slot's value comes from looks random to the machine: it is looked up, a jump would be guessed.
+    struct Origin {
+      const std::array<Scalar, static_cast<std::size_t>(Lanes)>* from;
+      double padding;
+    };
     const std::array<Scalar, static_cast<std::size_t>(Lanes)> none{};
-    const auto* const edges = values_.off_diagonal.data();
-    const auto* const rows = values_.diagonal.data();
+    const Origin origins[3] = {{values_.diagonal.data(), 1}, {&none, 0}, {values_.off_diagonal.data(), 0}};
     const Index end = plan_.column_begin[at(step.first + step.columns)];
     for (Index slot = plan_.column_begin[at(step.first)]; slot < end; ++slot) {
       const Index source = plan_.source[at(slot)];
-      const bool diagonal = source < EliminationPlan::kFill;
-      const auto* from = diagonal ? rows : edges;
-      from += diagonal ? EliminationPlan::source_of_row(source) : source;
-      from = source == EliminationPlan::kFill ? &none : from;
-      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], *from, diagonal ? 1 : 0);
+      const int is_row = source < EliminationPlan::kFill;
+      const int is_edge = source > EliminationPlan::kFill;
+      const Origin& origin = origins[1 + is_edge - is_row];
+      const Index place = source * (is_edge - is_row) - 2 * is_row;
+      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], origin.from[place], origin.padding);
     }
     for (Index p = step.first; p < step.first + step.columns; ++p) {
       square_size(factors_.diagonal_squared[at(p)], factors_.slots[at(plan_.diagonal_slot(p))]);
