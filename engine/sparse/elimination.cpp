@@ -11,6 +11,8 @@ namespace {
 
 /// Pivots of a front eliminated in one pass over its other rows.
 constexpr Index kPivotBlock = 4;
+/// Entries of the input fetched in advance of their use, which jumps about in memory.
+constexpr Index kAhead = 32;
 /// Keeps the mark of a zero pivot infinite where the whole row is zero (0 / 0 otherwise).
 constexpr double kTinySquared = std::numeric_limits<double>::min();
 
@@ -121,14 +123,21 @@ class Eliminator {
     };
     const std::array<Scalar, static_cast<std::size_t>(Lanes)> none{};
     const Origin origins[3] = {{values_.diagonal.data(), 1}, {&none, 0}, {values_.off_diagonal.data(), 0}};
-    const Index end = plan_.column_begin[at(step.first + step.columns)];
-    for (Index slot = plan_.column_begin[at(step.first)]; slot < end; ++slot) {
+    const auto origin_of = [&](Index slot, double& padding) {
       const Index source = plan_.source[at(slot)];
       const int is_row = source < EliminationPlan::kFill;
       const int is_edge = source > EliminationPlan::kFill;
       const Origin& origin = origins[1 + is_edge - is_row];
-      const Index place = source * (is_edge - is_row) - 2 * is_row;
-      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], origin.from[place], origin.padding);
+      padding = origin.padding;
+      return origin.from + (source * (is_edge - is_row) - 2 * is_row);
+    };
+    const Index end = plan_.column_begin[at(step.first + step.columns)];
+    const Index last = plan_.slots() - 1;
+    for (Index slot = plan_.column_begin[at(step.first)]; slot < end; ++slot) {
+      double padding;
+      __builtin_prefetch(origin_of(std::min(slot + kAhead, last), padding));
+      const auto* const from = origin_of(slot, padding);
+      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], *from, padding);
     }
     for (Index p = step.first; p < step.first + step.columns; ++p) {
       square_size(factors_.diagonal_squared[at(p)], factors_.slots[at(plan_.diagonal_slot(p))]);

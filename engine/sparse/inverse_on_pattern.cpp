@@ -11,6 +11,8 @@ namespace {
 
 /// Pivots of a front inverted in one pass over its other rows; two keep all sums in registers.
 constexpr Index kInverseBlock = 2;
+/// Entries fetched in advance of their use, which jumps about in memory.
+constexpr std::size_t kAhead = 32;
 
 std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 
@@ -59,6 +61,7 @@ class Inverter {
     const auto hand_out = [&](auto& to, const std::vector<Index>& slot_of) {
       const std::size_t end = to.size() * at(share + 1) / at(shares);
       for (std::size_t k = to.size() * at(share) / at(shares); k < end; ++k) {
+        __builtin_prefetch(slots_ + slot_of[std::min(k + kAhead, end - 1)]);
         from_pack<Scalar, Lanes>(to[k], slots_[at(slot_of[k])]);
       }
     };
