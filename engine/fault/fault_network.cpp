@@ -73,6 +73,9 @@ void FaultNetwork::assemble(int threads) {
       if (pinned[static_cast<std::size_t>(edges_[e].i)] || pinned[static_cast<std::size_t>(edges_[e].j)])
         values.off_diagonal[e][s] = 0.0;
   }
+  const auto same = [](const auto& entry) { return entry[kPositive] == entry[kNegative]; };
+  negative_is_positive_ = std::all_of(values.diagonal.begin(), values.diagonal.end(), same) &&
+                          std::all_of(values.off_diagonal.begin(), values.off_diagonal.end(), same);
   analysis_ = std::make_shared<const sparse::Analysis>(static_cast<sparse::Index>(n), edges_);
   factors_ = std::make_unique<sparse::Factorisation<Complex, 3>>(analysis_, values, threads);
   inverse_ = factors_->selected_inverse(threads);

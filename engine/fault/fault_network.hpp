@@ -50,6 +50,9 @@ class FaultNetwork {
   [[nodiscard]] const sparse::Factorisation<Complex, 3>& factors() const { return *factors_; }
   /// The element's own block, and the coupled group that the terminal is in.
   [[nodiscard]] const std::array<Slot, 2>& slots(std::uint32_t terminal) const { return slots_[terminal]; }
+  /// The negative sequence has the same admittances as the positive one, bit for bit: one solution serves
+  /// both.
+  [[nodiscard]] bool negative_is_positive() const { return negative_is_positive_; }
   /// Puts the positive sequence of another model with the same buses, switches and branches into one lane of
   /// `values`, which has this network's pattern (made by empty_values).
   void put_positive(const SequenceModel& other, int lane, sparse::Values<Complex, 3>& values) const;
@@ -89,6 +92,7 @@ class FaultNetwork {
   std::shared_ptr<const sparse::Analysis> analysis_;
   std::unique_ptr<sparse::Factorisation<Complex, 3>> factors_;
   Inverse inverse_;
+  bool negative_is_positive_ = false;
 };
 
 }  // namespace kiloamp::detail

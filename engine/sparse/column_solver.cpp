@@ -5,7 +5,7 @@
 #include <functional>
 #include <limits>
 #include <ranges>
-#include <type_traits>
+#include <utility>
 
 #include "engine/sparse/wide_registers.hpp"
 #if KILOAMP_WIDE_REGISTERS
@@ -153,21 +153,19 @@ void ColumnSolver<Scalar, Lanes, Block>::forward() {
 }
 
 template <typename Scalar, int Lanes, int Block>
-template <int Only>
+template <int First, int End>
 void ColumnSolver<Scalar, Lanes, Block>::backward(Index p) {
-  constexpr int kFirst = Only < 0 ? 0 : Only;
-  constexpr int kEnd = Only < 0 ? Lanes : Only + 1;
   const auto* const slots = factors_->slots.get();
   const Index* const rows = plan_->rows.data();
   const Index end = plan_->diagonal_slot(p);
   Row sum{};
   for (Index slot = plan_->column_begin[at(p)]; slot < end; ++slot) {
     const Row& x = x_[at(rows[slot])];
-    for (int s = kFirst; s < kEnd; ++s) subtract_scaled(sum[at(s)], lane_of(slots[slot], s), x[at(s)]);
+    for (int s = First; s < End; ++s) subtract_scaled(sum[at(s)], lane_of(slots[slot], s), x[at(s)]);
   }
   if (forward_stamp_[at(p)] == stamp_) {
     const auto& inverse = slots[end];
-    for (int s = kFirst; s < kEnd; ++s) subtract_scaled(sum[at(s)], -lane_of(inverse, s), x_[at(p)][at(s)]);
+    for (int s = First; s < End; ++s) subtract_scaled(sum[at(s)], -lane_of(inverse, s), x_[at(p)][at(s)]);
   }
   x_[at(p)] = sum;
 }
@@ -175,26 +173,25 @@ void ColumnSolver<Scalar, Lanes, Block>::backward(Index p) {
 template <typename Scalar, int Lanes, int Block>
 template <typename Range>
 void ColumnSolver<Scalar, Lanes, Block>::backward_all(const Range& positions) {
-  const auto with = [&]<int Only>(std::integral_constant<int, Only>) {
+  const auto with = [&]<int First, int End>(std::integer_sequence<int, First, End>) {
 #if KILOAMP_WIDE_REGISTERS
     if constexpr (kIsComplex<Scalar> && Block == 4) {
       if (has_wide_registers()) {
         const BackwardPass<Pack<Scalar, padded_width(Lanes)>, Row> pass{*plan_, factors_->slots.get(),
                                                                         x_.get(), forward_stamp_, stamp_};
-        backward_wide<Lanes, (Only < 0 ? 0 : Only), (Only < 0 ? Lanes : Only + 1)>(pass, positions);
+        backward_wide<Lanes, First, End>(pass, positions);
         return;
       }
     }
 #endif
-    for (const Index p : positions) backward<Only>(p);
+    for (const Index p : positions) backward<First, End>(p);
   };
-  if (std::count(filled_.begin(), filled_.end(), true) == 1) {
-    if (filled_[0]) return with(std::integral_constant<int, 0>{});
-    if constexpr (Lanes > 1) {
-      if (filled_[1]) return with(std::integral_constant<int, 1>{});
-    }
+  if constexpr (Lanes == 3) {  // the last, the last two or the outer two without a right-hand side
+    if (!filled_[2] && !filled_[1]) return with(std::integer_sequence<int, 0, 1>{});
+    if (!filled_[2] && !filled_[0]) return with(std::integer_sequence<int, 1, 2>{});
+    if (!filled_[2]) return with(std::integer_sequence<int, 0, 2>{});
   }
-  with(std::integral_constant<int, -1>{});
+  with(std::integer_sequence<int, 0, Lanes>{});
 }
 
 template <typename Scalar, int Lanes, int Block>

@@ -47,8 +47,6 @@ class ColumnSolver {
   void set(int which, Index row, int lane, Scalar value);
   /// Place of a row in the elimination order, and so in memory.
   [[nodiscard]] Index position(Index row) const;
-  /// All right-hand sides at one row, after solve().
-  [[nodiscard]] const Row& at_row(Index row) const { return at_position(position(row)); }
   /// All right-hand sides at one position of the elimination order, after solve().
   [[nodiscard]] const Row& at_position(Index position) const {
     return x_[static_cast<std::size_t>(position)];
@@ -57,10 +55,10 @@ class ColumnSolver {
  private:
   void add_path(std::vector<Index>& path, std::vector<Index>& stamps, Index position);
   void forward();
-  /// `Only` >= 0: the one lane whose right-hand sides are not all zero; the others get zeros.
-  template <int Only>
+  /// Lanes outside [First, End) have no right-hand side and get zeros.
+  template <int First, int End>
   void backward(Index position);
-  /// Calls backward for a range of positions with the right `Only`.
+  /// Calls backward for positions in their order, with the lanes that are needed.
   template <typename Range>
   void backward_all(const Range& positions);
 

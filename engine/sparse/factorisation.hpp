@@ -115,9 +115,9 @@ class Factorisation<Scalar, Lanes>::SparseSolver {
   void copy(int which, std::span<Entry> out) const;
   /// Where a row's solution lies among those of all rows: neighbours in memory have neighbouring numbers.
   [[nodiscard]] Index position(Index row) const { return plain_.position(row); }
-  /// All kBlock solutions at one row, side by side in each lane.
-  [[nodiscard]] const typename ColumnSolver<Scalar, Lanes>::Row& at_row(Index row) const {
-    return plain_.at_row(row);
+  /// All kBlock solutions at one position, side by side in each lane.
+  [[nodiscard]] const typename ColumnSolver<Scalar, Lanes>::Row& at_position(Index position) const {
+    return plain_.at_position(position);
   }
 
  private:

@@ -5,12 +5,11 @@
 #include <algorithm>
 #include <limits>
 
+#include "engine/study/outage_loops.hpp"
+
 namespace kiloamp::detail {
 
 namespace {
-
-using Four = sparse::FourDoubles;
-using FourComplex = sparse::Pack<Complex, 4>;
 
 // Below this the small matrix may be singular: the graph is asked whether the outage cuts something off. What
 // is cut off without a source may still have an impedance of its own and then the matrix is only small; below
@@ -22,16 +21,6 @@ constexpr double kWellConditioned = 1e-3;
 // A vector is a combination of others when less than this part of it is left over.
 constexpr double kInSpan = 1e-9;
 constexpr double kInfinite = std::numeric_limits<double>::infinity();
-
-FourComplex product(const FourComplex& a, const FourComplex& b) {
-  return {a.re * b.re - a.im * b.im, a.re * b.im + a.im * b.re};
-}
-void add(FourComplex& to, const FourComplex& a) {
-  to.re += a.re;
-  to.im += a.im;
-}
-FourComplex repeated(Complex a) { return {sparse::repeated(a.real()), sparse::repeated(a.imag())}; }
-Four squared_size(const FourComplex& a) { return a.re * a.re + a.im * a.im; }
 
 // K = U^T W.
 Eigen::MatrixXcd projected(const OutageChange& o, int s,
@@ -59,19 +48,18 @@ double largest_of(const std::vector<Complex>& d) {
 OutagePlaces::OutagePlaces(const Study& study) : of_bus(study.network().buses.size(), kNone) {
   const SequenceModel& m = study.model();
   const auto& solved = study.solver().solved();
+  const auto solver = solved.factors().sparse_solver();
   for (std::size_t b = 0; b < of_bus.size(); ++b) {
     const Node node = m.node_of_bus[b];
     if (node == Node::none) continue;
     const auto bus = static_cast<BusIndex>(b);
     const double ohm = m.base_ohm(bus);
     const Complex phase = study.options().phase_ohm / ohm, earth = study.options().earth_ohm / ohm;
-    row.push_back({bus, node, solved.inverse().diagonal[at(node)], phase, 3.0 * (phase + earth)});
+    row.push_back({bus, node, solver.position(static_cast<sparse::Index>(node)),
+                   solved.inverse().diagonal[at(node)], phase, 3.0 * (phase + earth)});
   }
-  const auto solver = solved.factors().sparse_solver();
-  std::stable_sort(row.begin(), row.end(), [&](const OutagePlace& a, const OutagePlace& b) {
-    return solver.position(static_cast<sparse::Index>(a.node)) <
-           solver.position(static_cast<sparse::Index>(b.node));
-  });
+  std::stable_sort(row.begin(), row.end(),
+                   [](const OutagePlace& a, const OutagePlace& b) { return a.position < b.position; });
   for (std::uint32_t place = 0; place < row.size(); ++place) of_bus[at(row[place].bus)] = place;
 }
 
@@ -99,11 +87,11 @@ void OutageWorker::run(std::span<const OutageChange> outages, const Visit& visit
   if (!together.empty()) side_by_side(outages, together, visit);
 }
 
-void OutageWorker::put(Solver& solver, int slot, const OutageChange& o, std::size_t r) {
+void OutageWorker::put(Solver& solver, int slot, const OutageChange& o, std::size_t r) const {
   for (std::size_t place = 0; place < o.nodes.size(); ++place) {
     Entry value{};
     for (int s = 0; s < 3; ++s)
-      if (r < o.u[s].size()) value[s] = o.u[s][r][place];
+      if (r < o.u[s].size() && lane(s) == static_cast<std::size_t>(s)) value[lane(s)] = o.u[s][r][place];
     solver.put(slot, static_cast<sparse::Index>(o.nodes[place]), value);
   }
 }
@@ -121,7 +109,7 @@ void OutageWorker::side_by_side(std::span<const OutageChange> outages, std::span
   std::array<Response, kSide> responses;
   for (std::size_t slot = 0; slot < which.size(); ++slot)
     responses[slot] = respond(outages[which[slot]], [&](std::size_t r, Node node, int s) {
-      return solvers_[r].get(static_cast<int>(slot), static_cast<sparse::Index>(node))[s];
+      return solvers_[r].get(static_cast<int>(slot), static_cast<sparse::Index>(node))[lane(s)];
     });
   apply(std::span(responses).first(which.size()), columns > 1);
   OutageBatch batch{{}, three_phase_, line_to_ground_, {}};
@@ -161,7 +149,7 @@ void OutageWorker::alone(const OutageChange& o, std::size_t k, const Visit& visi
     solvers_[0].solve();
     solvers_[0].copy(0, w);
   }
-  Response response = respond(o, [&](std::size_t r, Node node, int s) { return w_[r][at(node)][s]; });
+  Response response = respond(o, [&](std::size_t r, Node node, int s) { return w_[r][at(node)][lane(s)]; });
   for (int s = 0; s < 3; ++s)
     if (response.unheld[s]) hold_by_columns(o, s, response);
   for (std::size_t place = 0; place < places_.row.size(); ++place) general(o, response, place, false);
@@ -306,50 +294,26 @@ void OutageWorker::hold_by_columns(const OutageChange& o, int s, Response& respo
   response.gain[s] = k.inverse();
 }
 
-// Z' = Z + W G W^T for four outages at a time: each holds one place of every pack.
+// Z' = Z + W G W^T for four outages at a time: each holds one number of every pack.
 void OutageWorker::apply(std::span<const Response> responses, bool second_column) {
-  BySequence<std::array<FourComplex, 3>> gains{};  // G_11, 2 G_12, G_22
+  FourOutages four{};
   for (std::size_t slot = 0; slot < responses.size(); ++slot)
     for (int s = 0; s < 3; ++s) {
       const auto& g = responses[slot].gain[s];
       const auto set = [&](std::size_t which, Complex value) {
-        sparse::set_lane<4>(gains[s][which].re, static_cast<int>(slot), value.real());
-        sparse::set_lane<4>(gains[s][which].im, static_cast<int>(slot), value.imag());
+        sparse::set_lane<4>(four.gain[s][which].re, static_cast<int>(slot), value.real());
+        sparse::set_lane<4>(four.gain[s][which].im, static_cast<int>(slot), value.imag());
       };
       if (g.size() >= 1) set(0, g(0, 0));
-      if (g.size() >= 4) {
-        set(1, g(0, 1) + g(1, 0));
-        set(2, g(1, 1));
-      }
+      if (g.size() < 4) continue;
+      set(1, g(0, 1) + g(1, 0));
+      set(2, g(1, 1));
+      four.second[s] = second_column;
     }
-  BySequence<bool> second{};
-  for (int s = 0; s < 3; ++s)
-    for (const Response& response : responses) second[s] |= second_column && response.gain[s].size() >= 4;
-  for (std::size_t p = 0; p < places_.row.size(); ++p) {
-    const OutagePlace& place = places_.row[p];
-    const auto row = static_cast<sparse::Index>(place.node);
-    const auto& first_row = solvers_[0].at_row(row);
-    BySequence<FourComplex> z;
-    for (int s = 0; s < 3; ++s) {
-      const auto lane = static_cast<std::size_t>(s);
-      const FourComplex& a = first_row[lane];
-      FourComplex slope = product(gains[s][0], a);
-      z[s] = repeated(place.intact[s]);
-      if (second[s]) {
-        const FourComplex& c = solvers_[1].at_row(row)[lane];
-        add(slope, product(gains[s][1], c));
-        add(z[s], product(product(gains[s][2], c), c));
-      }
-      add(z[s], product(slope, a));
-    }
-    FourComplex three = repeated(place.extra3), ground = repeated(place.extra1);
-    add(three, z[kPositive]);
-    add(ground, z[kPositive]);
-    add(ground, z[kNegative]);
-    add(ground, z[kZero]);
-    three_phase_[p] = squared_size(three);
-    line_to_ground_[p] = squared_size(ground);
-  }
+  for (int s = 0; s < 3; ++s) four.lane[s] = lane(s);
+  four.a = &solvers_[0];
+  four.c = &solvers_[1];
+  change_loops(four, places_.row, three_phase_, line_to_ground_);
 }
 
 void OutageWorker::drop_lost(const OutageChange& o, const Response& response, int number) {
@@ -378,7 +342,8 @@ void OutageWorker::general(const OutageChange& o, const Response& response, std:
     const auto& g = response.gain[s];
     const bool by_columns = g.rows() != o.rank[s];
     const auto w = [&](Eigen::Index c) {
-      const Complex value = (by_columns ? held_[s] : w_)[static_cast<std::size_t>(c)][node][s];
+      const auto column = static_cast<std::size_t>(c);
+      const Complex value = by_columns ? held_[s][column][node][s] : w_[column][node][lane(s)];
       return far && !response.cut[s] ? 1.0 - value : value;
     };
     for (Eigen::Index a = 0; a < g.rows(); ++a)

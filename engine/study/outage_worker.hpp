@@ -12,6 +12,7 @@ namespace kiloamp::detail {
 struct OutagePlace {
   BusIndex bus;
   Node node;
+  sparse::Index position;      ///< of the node's solutions in memory
   BySequence<Complex> intact;  ///< Z_kk in pu
   Complex extra3, extra1;      ///< fault impedances in the three-phase and in the line-to-ground loop, in pu
 };
@@ -62,7 +63,11 @@ class OutageWorker {
   void side_by_side(std::span<const OutageChange> outages, std::span<const std::size_t> which,
                     const Visit& visit);
   void alone(const OutageChange& outage, std::size_t k, const Visit& visit);
-  static void put(Solver& solver, int slot, const OutageChange& outage, std::size_t r);
+  void put(Solver& solver, int slot, const OutageChange& outage, std::size_t r) const;
+  /// The lane of the solutions that holds a sequence.
+  [[nodiscard]] std::size_t lane(int s) const {
+    return static_cast<std::size_t>(s == kNegative && solved_.negative_is_positive() ? kPositive : s);
+  }
   Response respond(const OutageChange& outage, const Columns& w);
   Complex sharper(const OutageChange& outage, int s, const Columns& w, Complex plain,
                   double plain_terms) const;

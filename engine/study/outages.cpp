@@ -110,6 +110,18 @@ class Extremes {
   };
 
   explicit Extremes(std::size_t places) : places_(places) {}
+  /// All outages of a batch at one place; outages[k] is number k's.
+  void take_all(std::size_t place, const OutageBatch& batch, const std::array<std::size_t, 4>& outages) {
+    Place& here = places_[place];
+    const auto check = [&](const sparse::FourDoubles& loops, Pair& pair) {
+      const auto [least, most] = std::minmax({loops[0], loops[1], loops[2], loops[3]});
+      if (least > pair.smallest.loop && most < pair.largest.loop) return;  // by far the most common
+      for (int k = 0; k < static_cast<int>(batch.which.size()); ++k)
+        pair.take({loops[k], outages[static_cast<std::size_t>(k)]});
+    };
+    check(batch.three_phase[place], here.three_phase);
+    check(batch.line_to_ground[place], here.line_to_ground);
+  }
   /// Number `k` of a batch, at one place.
   void take(std::size_t place, const OutageBatch& batch, int k, std::size_t outage) {
     places_[place].three_phase.take({batch.three_phase[place][k], outage});
@@ -213,9 +225,9 @@ OutageTable single_outages(const Study& study, const OutageOptions& options) {
     const std::size_t count = std::min(kInTask, changes.size() - first);
     own->worker.run(std::span(changes).subspan(first, count), [&](const OutageBatch& batch) {
       if (!options.depth) {
-        for (const auto p : wanted)
-          for (std::size_t k = 0; k < batch.which.size(); ++k)
-            own->extremes.take(p, batch, static_cast<int>(k), first + batch.which[k]);
+        std::array<std::size_t, 4> outages{};
+        for (std::size_t k = 0; k < batch.which.size(); ++k) outages[k] = first + batch.which[k];
+        for (const auto p : wanted) own->extremes.take_all(p, batch, outages);
       }
       for (std::size_t k = 0; k < batch.which.size(); ++k) {
         const OutageChange& change = changes[first + batch.which[k]];

@@ -1,5 +1,5 @@
 // All single outages of a case by low-rank change, against a new factorisation and selected inverse for each,
-// with the same core, on one thread.
+// with the same core and the same number of threads.
 //
 // usage: outages_versus_refactorising CASE.json
 // The refactorisation is timed on the intact network's pattern and multiplied by the number of outages.
@@ -38,9 +38,6 @@ int main(int argc, char** argv) {
   OutageOptions options;
   options.kinds = {ElementKind::line, ElementKind::transformer, ElementKind::three_winding_transformer,
                    ElementKind::series_reactor};
-  OutageTable table;
-  const double all = milliseconds([&] { table = single_outages(study, options); });
-
   // A matrix of branches of one admittance on the network's own pattern, in the memory of the first.
   const auto& factors = study.solver().solved().factors();
   const auto edges = factors.analysis().edges();
@@ -54,18 +51,25 @@ int main(int argc, char** argv) {
   const auto analysis = std::make_shared<const sparse::Analysis>(factors.analysis().order(), edges);
   sparse::Factorisation<Complex, 3> other(analysis, values);
   auto inverse = other.selected_inverse();
-  std::vector<double> times;
-  for (int k = 0; k < 15; ++k)
-    times.push_back(milliseconds([&] {
-      other.refactorise(values);
-      other.selected_inverse(inverse);
-    }));
-  std::nth_element(times.begin(), times.begin() + 7, times.end());
-  const double refactorising = times[7] * static_cast<double>(table.outages);
-  std::printf("%d nodes, %zu outages, all buses, three sequences, one thread\n", factors.analysis().order(),
-              table.outages);
-  std::printf(
-      "by low-rank change %.0f ms (%.3f ms each); refactorising and inverting %.3f ms each: %.1f times\n",
-      all, all / static_cast<double>(table.outages), times[7], refactorising / all);
+  std::printf("%d nodes, all buses, three sequences\n", factors.analysis().order());
+  for (const int threads : {1, 2}) {
+    options.threads = threads;
+    OutageTable table;
+    std::vector<double> all, one;
+    for (int round = 0; round < 3; ++round) {
+      all.push_back(milliseconds([&] { table = single_outages(study, options); }));
+      for (int k = 0; k < 9; ++k)
+        one.push_back(milliseconds([&] {
+          other.refactorise(values, threads);
+          other.selected_inverse(inverse, threads);
+        }));
+    }
+    std::sort(all.begin(), all.end());
+    std::sort(one.begin(), one.end());
+    const double each = all[1] / static_cast<double>(table.outages), again = one[one.size() / 2];
+    std::printf(
+        "threads %d: %zu outages, %.3f ms each; refactorising and inverting %.3f ms each: %.1f times\n",
+        threads, table.outages, each, again, again / each);
+  }
   return 0;
 }
