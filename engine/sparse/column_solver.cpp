@@ -98,7 +98,7 @@ template <typename Scalar, int Lanes, int Block>
 ColumnSolver<Scalar, Lanes, Block>::ColumnSolver(const LaneFactors<Scalar, padded_width(Lanes)>& factors)
     : factors_(&factors),
       plan_(factors.plan.get()),
-      x_(std::make_unique_for_overwrite<Row[]>(at(plan_->order))),
+      x_(at(plan_->order)),
       forward_stamp_(at(plan_->order), 0),
       wanted_stamp_(at(plan_->order), 0) {
   clear();

@@ -64,7 +64,7 @@ class ColumnSolver {
 
   const LaneFactors<Scalar, padded_width(Lanes)>* factors_;
   const EliminationPlan* plan_;
-  std::unique_ptr<Row[]> x_;  // by position; only what a solution needs is touched
+  LineArray<Row> x_;  // by position; only what a solution needs is touched
   std::vector<Index> forward_stamp_;
   std::vector<Index> wanted_stamp_;
   std::vector<Index> path_;  // positions that hold a right-hand side or receive one, unsorted

@@ -274,7 +274,7 @@ void invert_on_pattern(const LaneFactors<Scalar, padded_width(Lanes)>& factors,
   inverse.diagonal.resize(at(plan.order));
   inverse.off_diagonal.resize(plan.edges);
   if (!workspace.slots) {
-    workspace.slots = std::make_unique_for_overwrite<typename Worker::Entry[]>(plan.all_slots());
+    workspace.slots = LineArray<typename Worker::Entry>(plan.all_slots());
     workspace.kept.resize(factors.layout.kept);
   }
   const std::size_t count = at(std::max(threads, 1));

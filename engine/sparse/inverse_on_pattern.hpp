@@ -1,7 +1,6 @@
 // Entries of Z = A^-1 on the pattern of A from L and D, without forming Z.
 #pragma once
 #include <array>
-#include <memory>
 #include <vector>
 
 #include "engine/sparse/elimination.hpp"
@@ -22,7 +21,7 @@ struct InverseWorkspace {
     std::vector<Pack<Scalar, 4>> stack;
     std::vector<Pack<Scalar, 4>> scratch;
   };
-  std::unique_ptr<Pack<Scalar, Width>[]> slots;  // as those of the factors, of Z
+  LineArray<Pack<Scalar, Width>> slots;  // as those of the factors, of Z
   std::vector<Pack<Scalar, 4>> kept;
   std::vector<Worker> workers;
 };

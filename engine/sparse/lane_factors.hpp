@@ -7,6 +7,7 @@
 
 #include "engine/sparse/elimination_plan.hpp"
 #include "engine/sparse/lane_pack.hpp"
+#include "engine/sparse/line_array.hpp"
 
 namespace kiloamp::sparse {
 
@@ -67,14 +68,14 @@ template <typename Scalar, int Width>
 struct LaneFactors {
   std::shared_ptr<const EliminationPlan> plan;
   FrontLayout layout;
-  std::unique_ptr<Pack<Scalar, Width>[]> slots;
+  LineArray<Pack<Scalar, Width>> slots;
   std::unique_ptr<Doubles<Width>[]> diagonal_squared;  // |a_pp|^2 by position
   std::vector<PivotWatch<Width>> watches;              // per task, the top last
 
   explicit LaneFactors(std::shared_ptr<const EliminationPlan> shared_plan)
       : plan(std::move(shared_plan)),
         layout(lay_out_fronts<Width>(*plan)),
-        slots(std::make_unique_for_overwrite<Pack<Scalar, Width>[]>(plan->all_slots())),
+        slots(plan->all_slots()),
         diagonal_squared(
             std::make_unique_for_overwrite<Doubles<Width>[]>(static_cast<std::size_t>(plan->order))),
         watches(static_cast<std::size_t>(plan->tasks) + 1) {}
