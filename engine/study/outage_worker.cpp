@@ -49,10 +49,9 @@ OutagePlaces::OutagePlaces(const Study& study) : of_bus(study.network().buses.si
   const SequenceModel& m = study.model();
   const auto& solved = study.solver().solved();
   const auto solver = solved.factors().sparse_solver();
-  for (std::size_t b = 0; b < of_bus.size(); ++b) {
-    const Node node = m.node_of_bus[b];
+  for (const BusIndex bus : study.wanted_buses()) {
+    const Node node = m.node_of_bus[at(bus)];
     if (node == Node::none) continue;
-    const auto bus = static_cast<BusIndex>(b);
     const double ohm = m.base_ohm(bus);
     const Complex phase = study.options().phase_ohm / ohm, earth = study.options().earth_ohm / ohm;
     row.push_back({bus, node, solver.position(static_cast<sparse::Index>(node)),
@@ -154,7 +153,9 @@ void OutageWorker::alone(const OutageChange& o, std::size_t k, const Visit& visi
     if (response.unheld[s]) hold_by_columns(o, s, response);
   for (std::size_t place = 0; place < places_.row.size(); ++place) general(o, response, place, false);
   if (o.split)
-    for (const BusIndex bus : o.split->far_buses) general(o, response, places_.of_bus[at(bus)], true);
+    for (const BusIndex bus : o.split->far_buses)
+      if (const auto place = places_.of_bus[at(bus)]; place != OutagePlaces::kNone)
+        general(o, response, place, true);
   drop_lost(o, response, 0);
   visit({std::span(&k, 1), three_phase_, line_to_ground_, {&response.lost}});
 }
@@ -320,6 +321,7 @@ void OutageWorker::drop_lost(const OutageChange& o, const Response& response, in
   for (int s = 0; s < 2; ++s) {
     const auto drop = [&](BusIndex bus) {
       const std::size_t place = places_.of_bus[at(bus)];
+      if (place == OutagePlaces::kNone) return;
       if (s != kZero) sparse::set_lane<4>(three_phase_[place], number, kInfinite);
       sparse::set_lane<4>(line_to_ground_[place], number, kInfinite);
     };

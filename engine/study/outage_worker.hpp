@@ -17,11 +17,11 @@ struct OutagePlace {
   Complex extra3, extra1;      ///< fault impedances in the three-phase and in the line-to-ground loop, in pu
 };
 
-/// The buses in service, and where each stands.
+/// The study's wanted buses in service, and where each stands.
 struct OutagePlaces {
   explicit OutagePlaces(const Study& study);
   std::vector<OutagePlace> row;
-  std::vector<std::uint32_t> of_bus;  ///< into row; kNone for a bus out of service
+  std::vector<std::uint32_t> of_bus;  ///< into row; kNone for a bus that is not wanted or out of service
   static constexpr std::uint32_t kNone = UINT32_MAX;
 };
 

@@ -77,7 +77,8 @@ class Near {
         }
     std::vector<std::uint32_t> near;
     for (const Node n : reached)
-      for (const BusIndex b : model_.buses_of(n)) near.push_back(places_.of_bus[at(b)]);
+      for (const BusIndex b : model_.buses_of(n))
+        if (places_.of_bus[at(b)] != OutagePlaces::kNone) near.push_back(places_.of_bus[at(b)]);
     return near;
   }
 
@@ -196,6 +197,25 @@ std::optional<OutageCurrents> one_outage(const Study& study, ElementRef element)
   return currents;
 }
 
+namespace {
+
+// A bus inside a power station unit has factors of its own, before every outage and after it.
+void replace_rows_inside_units(const Study& study, const OutageOptions& options, OutageTable& table) {
+  for (std::size_t r = 0; r < table.rows.size(); ++r) {
+    const BusIndex bus = table.rows[r].bus;
+    const auto inside = study.inside_unit(bus);
+    if (!inside || (r > 0 && table.rows[r - 1].bus == bus)) continue;
+    OutageOptions same = options;
+    same.progress = {};
+    const OutageTable own = single_outages(*inside, same);
+    for (const OutageRow& row : own.rows)
+      for (OutageRow& place : table.rows)
+        if (place.bus == row.bus && place.kind == row.kind) place = row;
+  }
+}
+
+}  // namespace
+
 OutageTable single_outages(const Study& study, const OutageOptions& options) {
   const OutagePlaces places(study);
   const std::vector<OutageChange> changes = all_changes(study, options.kinds);
@@ -276,6 +296,7 @@ OutageTable single_outages(const Study& study, const OutageOptions& options) {
       table.rows.push_back(row);
     }
   }
+  replace_rows_inside_units(study, options, table);
   return table;
 }
 

@@ -45,8 +45,8 @@ struct OutageTable {
 /// Z' = Z + W (D^-1 - U^T W)^-1 W^T with W = Z U for each outage, D and U from the element's own admittances
 /// (outage_change.hpp); never a new factorisation. Where the small matrix is singular the outage may cut a
 /// part off: the graph decides, the part's current is 0, and the rest follows with the part held at one
-/// point. The study's fault impedances and prefault voltages apply. The result does not depend on the number
-/// of threads. Source: Woodbury's identity.
+/// point. The study's fault impedances, prefault voltages, wanted buses and corrections apply. The result
+/// does not depend on the number of threads. Source: Woodbury's identity.
 [[nodiscard]] OutageTable single_outages(const Study& study, const OutageOptions& options);
 
 /// Currents [kA] of one outage at every bus of the case (0 where out of service): the same computation for a

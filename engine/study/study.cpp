@@ -185,22 +185,20 @@ void Study::correct() {
   if (!tolerance.elements.empty()) defaults_.push_back(std::move(tolerance));
 }
 
-std::optional<std::uint32_t> Study::unit_around(BusIndex bus) const {
-  for (const auto& [node, unit] : inside_)
-    if (node == model_.node_of_bus[at(bus)]) return unit;
-  return std::nullopt;
+std::unique_ptr<Study> Study::inside_unit(BusIndex bus) const {
+  for (const auto& [node, unit] : inside_) {
+    if (node != model_.node_of_bus[at(bus)]) continue;
+    StudyOptions options = options_;
+    options.scenario.reset();  // as_given_ is in its state
+    options.inside_unit = unit;
+    options.buses = {bus};
+    return std::make_unique<Study>(Network(*as_given_), options);
+  }
+  return nullptr;
 }
 
 void FaultLoop::at_bus(BusIndex bus, const FaultVisit& visit) {
-  if (const auto unit = study_->unit_around(bus)) {
-    StudyOptions inside = study_->options();
-    inside.scenario.reset();
-    inside.inside_unit = unit;
-    inside.buses = {bus};
-    const Study own(Network(study_->as_given()), inside);
-    FaultLoop(own).at_bus(bus, visit);
-    return;
-  }
+  if (const auto inside = study_->inside_unit(bus)) return FaultLoop(*inside).at_bus(bus, visit);
   const StudyOptions& options = study_->options();
   for (const FaultKind kind : options.kinds) {
     study_->solver().solve({bus, kind, options.phase_ohm, options.earth_ohm}, options.fault, *workspace_,

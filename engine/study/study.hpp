@@ -82,10 +82,9 @@ class Study {
   /// IEC 60909: what was corrected, and what follows from a fault; null for another method.
   [[nodiscard]] const std::vector<iec60909::Correction>& corrections() const { return corrections_; }
   [[nodiscard]] const iec60909::Evaluation* iec60909() const { return evaluation_.get(); }
-  /// The unit between whose machine and transformer the bus lies, when its faults need factors of their own.
-  [[nodiscard]] std::optional<std::uint32_t> unit_around(BusIndex bus) const;
-  /// The network after the scenario and before any correction; only where unit_around may be asked for.
-  [[nodiscard]] const Network& as_given() const { return *as_given_; }
+  /// A study of its own for a bus between machine and transformer of a power station unit, whose faults need
+  /// factors of their own; null for every other bus.
+  [[nodiscard]] std::unique_ptr<Study> inside_unit(BusIndex bus) const;
   /// The buses whose faults are wanted: those of the options, else all in service in the case's order.
   [[nodiscard]] const std::vector<BusIndex>& wanted_buses() const { return wanted_; }
   /// Solves every wanted fault, bus by bus and kind by kind, and hands each to `visit`; the result is only

@@ -2,6 +2,7 @@
 #include <cmath>
 #include <map>
 
+#include "engine/study/outages.hpp"
 #include "tests/support/case_study.hpp"
 #include "tests/support/near.hpp"
 
@@ -147,6 +148,18 @@ BOOST_AUTO_TEST_CASE(fault_between_generator_and_unit_transformer) {
   const double zt = 10.5 * 10.5 / 100 * 0.12 * kt + 4 * 10.5 * 10.5 / (110 * 110);
   const double expected = 1.1 * 10.5 / std::sqrt(3.0) * (1 / zg + 1 / zt);
   BOOST_TEST(near(solve(c.study(), c.bus("10"), FaultKind::three_phase).quantities.ikss_ka, expected, 1e-9));
+}
+
+// An outage study starts from the same intact current as the sweep, inside a unit too.
+BOOST_AUTO_TEST_CASE(outages_start_from_the_current_of_the_sweep) {
+  const CaseStudy c(read("cases/eight_node_grid.json"), iec());
+  const OutageTable table = single_outages(c.study(), {});
+  BOOST_TEST(table.rows.size() == 20U);
+  for (const OutageRow& row : table.rows) {
+    const double intact = solve(c.study(), row.bus, row.kind).quantities.ikss_ka;
+    BOOST_TEST(near(row.intact_ka, intact, 1e-9), c.study().network().bus(row.bus).id);
+    if (row.intact_ka > 0) BOOST_TEST(row.smallest.current_ka < row.intact_ka);
+  }
 }
 
 BOOST_AUTO_TEST_CASE(a_feeder_with_its_own_voltage_factor_keeps_it) {
