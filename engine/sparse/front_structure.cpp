@@ -6,10 +6,11 @@
 namespace kiloamp::sparse {
 namespace {
 
-/// Zeros a merge may add whatever the size of the front: about the cost of assembling one small front.
-constexpr std::int64_t kFreeZeros = 12;
+/// Zeros a merge may add whatever the size of the front. Few: a front saved costs less than its zeros do in
+/// all that reads the factors later, the backward passes above all.
+constexpr std::int64_t kFreeZeros = 4;
 /// Share of a merged front's pivot rows that may be explicit zeros.
-constexpr double kZeroShare = 0.12;
+constexpr double kZeroShare = 0.06;
 
 std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 

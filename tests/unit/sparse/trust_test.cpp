@@ -1,6 +1,7 @@
 // Matrices that elimination without pivoting handles badly, and singular ones.
 #include <boost/test/unit_test.hpp>
 
+#include "engine/sparse/residual_probe.hpp"
 #include "tests/unit/sparse/random_systems.hpp"
 
 namespace kiloamp::sparse {
@@ -228,6 +229,52 @@ BOOST_AUTO_TEST_CASE(a_large_impedance_to_earth_needs_no_remedy) {
   for (const auto& entry : factorisation.selected_inverse().diagonal) {
     BOOST_TEST(test::close<Complex>(entry[0] * 1e-5, Complex(0, -1), 1e-6));
   }
+}
+
+/// Factors of one lane with what belongs to them, below the level of Factorisation.
+struct PlainFactors {
+  PlainFactors(const Graph& graph, const Values<Complex, 1>& values)
+      : factors(std::make_shared<const EliminationPlan>(plan_elimination(graph.order, graph.edges))) {
+    EliminationWorkspace<Complex> workspace;
+    eliminate<Complex, 1>(factors, workspace, values, 1);
+  }
+  LaneFactors<Complex, 1> factors;
+};
+
+BOOST_AUTO_TEST_CASE(sound_factors_are_settled_by_their_spot) {
+  std::mt19937 random(29);
+  for (const Graph& graph : test::unfriendly_graphs(random)) {
+    BOOST_TEST_CONTEXT(graph.name) {
+      auto values = test::random_values<Complex, 1>(graph, 1.4, random);
+      const PlainFactors plain(graph, values);
+      const auto& plan = *plain.factors.plan;
+      BOOST_TEST(is_sound(plain.factors, 1));
+      ProbeSolver<Complex, 1> solver(plain.factors);
+      const auto right = probe_spot<Complex, 1>(solver, plan, values);
+      BOOST_TEST(right[0].residual <= 1e-12);
+      // The equations of the spot notice a change of any of their coefficients.
+      if (plan.spot.terms.empty()) continue;
+      values.off_diagonal[at(plan.spot.terms.back().edge)][0] *= 1.01;
+      const auto wrong = probe_spot<Complex, 1>(solver, plan, values);
+      BOOST_TEST(wrong[0].residual > 1e-12);
+    }
+  }
+}
+
+BOOST_AUTO_TEST_CASE(a_row_that_outgrows_its_diagonal_is_not_sound_though_no_pivot_is_suspect) {
+  const Graph graph{"chain", 3, {{0, 1}, {1, 2}}};
+  const Values<Complex, 1> values{{{1e-4}, {1e-3}, {1e-4}}, {{1.0}, {1.0}}};
+  const PlainFactors plain(graph, values);
+  for (const auto& watch : plain.factors.watches) {
+    BOOST_TEST(watch.worst[0][0].squared < kSuspectGrowth * kSuspectGrowth);
+  }
+  BOOST_TEST(!is_sound(plain.factors, 1));
+}
+
+BOOST_AUTO_TEST_CASE(factors_that_overflow_are_not_sound) {
+  const Graph graph{"pair", 2, {{0, 1}}};
+  const Values<Complex, 1> values{{{1e-200}, {1e-200}}, {{1e-200}}};
+  BOOST_TEST(!is_sound(PlainFactors(graph, values).factors, 1));
 }
 
 BOOST_AUTO_TEST_CASE(the_comparison_of_these_tests_fails_on_not_a_number) {
