@@ -7,11 +7,12 @@ namespace kiloamp {
 namespace {
 
 constexpr int kAmount = 6, kAngle = 3;
+constexpr const char* kQuoted = ",\"\r\n";
 
 }  // namespace
 
 std::string csv_field(const std::string& text) {
-  if (text.find_first_of(",\"\r\n") == std::string::npos) return text;
+  if (text.find_first_of(kQuoted) == std::string::npos) return text;
   std::string out = "\"";
   for (const char c : text) {
     if (c == '"') out += '"';
@@ -81,7 +82,11 @@ class CsvPiece : public ReportPiece {
     text += ',';
     text += case_kind_name(studied.case_kind);
     text += ',';
-    text += csv_field(element(study_.network(), c.element).id);
+    const std::string& id = element(study_.network(), c.element).id;
+    if (id.find_first_of(kQuoted) == std::string::npos)
+      text += id;
+    else
+      text += csv_field(id);
     text += ',';
     text += bus_fields_[at(c.bus)];
     phasors(c.sequence_ka);

@@ -1,14 +1,36 @@
 #include "reports/number_text.hpp"
 
+#include <array>
 #include <charconv>
 #include <cmath>
 #include <cstdint>
+#include <cstring>
 
 namespace kiloamp {
 
 namespace {
 constexpr std::int64_t kPower[] = {1, 10, 100, 1000, 10000, 100000, 1000000, 10000000, 100000000, 1000000000};
 constexpr double kScaledLimit = 1e9;  // 1e9 * 1e9 still fits 63 bits
+
+// 00 to 99.
+constexpr auto kPairs = [] {
+  std::array<char, 200> pairs{};
+  for (std::size_t n = 0; n < 100; ++n) {
+    pairs[2 * n] = static_cast<char>('0' + n / 10);
+    pairs[2 * n + 1] = static_cast<char>('0' + n % 10);
+  }
+  return pairs;
+}();
+
+// The last `digits` digits of value, ending before `at`; returns where they begin.
+char* put_digits(char* at, std::uint64_t value, int digits) {
+  for (; digits >= 2; digits -= 2, value /= 100) {
+    at -= 2;
+    std::memcpy(at, &kPairs[2 * (value % 100)], 2);
+  }
+  if (digits == 1) *--at = static_cast<char>('0' + value % 10);
+  return at;
+}
 }  // namespace
 
 void append_fixed(std::string& out, double value, int decimals) {
@@ -19,16 +41,22 @@ void append_fixed(std::string& out, double value, int decimals) {
                std::to_chars(buffer, buffer + sizeof buffer, value, std::chars_format::fixed, decimals).ptr);
     return;
   }
-  const std::int64_t scaled = std::llround(std::abs(value) * static_cast<double>(kPower[decimals]));
-  if (value < 0 && scaled != 0) out += '-';
-  char* end = std::to_chars(buffer, buffer + sizeof buffer, scaled / kPower[decimals]).ptr;
+  const double wanted = std::abs(value) * static_cast<double>(kPower[decimals]);
+  auto scaled = static_cast<std::uint64_t>(wanted + 0.5);
+  if (static_cast<double>(scaled) - wanted > 0.5) --scaled;  // the sum itself was rounded up
+  char* const end = buffer + sizeof buffer;
+  char* at = end;
+  const auto power = static_cast<std::uint64_t>(kPower[decimals]);
+  std::uint64_t whole = scaled / power;
   if (decimals > 0) {
-    *end++ = '.';
-    std::int64_t rest = scaled % kPower[decimals];
-    for (int d = decimals - 1; d >= 0; --d, rest /= 10) end[d] = static_cast<char>('0' + rest % 10);
-    end += decimals;
+    at = put_digits(at, scaled % power, decimals);
+    *--at = '.';
   }
-  out.append(buffer, end);
+  int digits = 1;
+  for (std::uint64_t rest = whole; rest >= 10; rest /= 10) ++digits;
+  at = put_digits(at, whole, digits);
+  if (value < 0 && scaled != 0) *--at = '-';
+  out.append(at, end);
 }
 
 void append_shortest(std::string& out, double value) {

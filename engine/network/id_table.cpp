@@ -35,7 +35,7 @@ std::optional<ElementRef> IdTable::find(const Network& network, std::string_view
 }
 
 std::optional<ElementRef> IdTable::add(const Network& network, ElementRef ref) {
-  if (2 * (used_ + 1) > slots_.size()) grow();
+  if (2 * (used_ + 1) > slots_.size()) resize(slots_.empty() ? kSmallest : 2 * slots_.size());
   const std::string& id = element(network, ref).id;
   const std::uint32_t hash = hash_of(id);
   Slot& slot = slots_[slot_of(network, id, hash)];
@@ -45,8 +45,14 @@ std::optional<ElementRef> IdTable::add(const Network& network, ElementRef ref) {
   return std::nullopt;
 }
 
-void IdTable::grow() {
-  std::vector<Slot> old(slots_.empty() ? kSmallest : 2 * slots_.size());
+void IdTable::reserve(std::size_t elements) {
+  std::size_t slots = kSmallest;
+  while (slots < 2 * (elements + 1)) slots *= 2;
+  if (slots > slots_.size()) resize(slots);
+}
+
+void IdTable::resize(std::size_t slots) {
+  std::vector<Slot> old(slots);
   old.swap(slots_);
   const std::size_t mask = slots_.size() - 1;
   for (const Slot& one : old) {

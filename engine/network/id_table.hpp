@@ -14,6 +14,8 @@ class IdTable {
   /// All elements of a network whose ids are unique.
   explicit IdTable(const Network& network);
 
+  /// Makes room for `elements` at once.
+  void reserve(std::size_t elements);
   /// Empty: nobody bears it.
   [[nodiscard]] std::optional<ElementRef> find(const Network& network, std::string_view id) const;
   /// Enters the element under its id. Returns who bears that id already, and then enters nothing.
@@ -27,7 +29,7 @@ class IdTable {
     bool used = false;
   };
   [[nodiscard]] std::size_t slot_of(const Network& network, std::string_view id, std::uint32_t hash) const;
-  void grow();
+  void resize(std::size_t slots);
 
   std::vector<Slot> slots_;
   std::size_t used_ = 0;

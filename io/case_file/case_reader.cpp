@@ -9,6 +9,7 @@
 #include <iterator>
 #include <nlohmann/json.hpp>
 
+#include "io/case_file/element_queue.hpp"
 #include "io/case_file/element_reader.hpp"
 #include "io/case_file/sha256.hpp"
 
@@ -17,6 +18,7 @@ namespace kiloamp {
 namespace {
 
 using case_file::Complaints;
+using case_file::ElementQueue;
 using case_file::ElementReader;
 using case_file::Value;
 using case_file::Values;
@@ -24,6 +26,7 @@ using nlohmann::json;
 
 constexpr std::size_t kDeepest = 32;
 constexpr std::size_t kMostShown = 100;
+constexpr std::size_t kBytesOfElement = 130;  // of a usual case; only how much room is made depends on it
 
 const std::vector<std::string_view>& root_fields() {
   static const std::vector<std::string_view> fields = [] {
@@ -48,7 +51,7 @@ std::string place_in_text(std::string_view text, std::size_t position) {
 // Receives the document's events; builds one element at a time in `values_` and hands it on.
 class Receiver {
  public:
-  Receiver(Network& network, Complaints& complaints, ElementReader& elements, std::string_view text)
+  Receiver(Network& network, Complaints& complaints, ElementQueue& elements, std::string_view text)
       : network_(network), complaints_(complaints), elements_(elements), text_(text) {}
 
   bool null() {
@@ -145,6 +148,12 @@ class Receiver {
     complaints_.add(0, {}, std::move(fault), std::move(allowed), std::move(remedy));
   }
 
+  // An element, or a field of the document, is collected from here on.
+  void begin() {
+    values_ = section_ ? &elements_.next() : &root_values_;
+    values_->clear();
+  }
+
   // Containers opened within what is being collected stand in open_.
   template <typename Fill>
   bool put(Fill&& fill) {
@@ -154,14 +163,14 @@ class Receiver {
       return true;
     }
     const bool top = depth_ == 1 || (depth_ == 2 && section_);
-    if (top) values_.clear();
-    Value& v = values_.add();
+    if (top) begin();
+    Value& v = values_->add();
     v.type = Value::Type::null;
     v.integer = false;
-    if (open_.empty() || values_[open_.back()].type == Value::Type::object) v.key = key_;
+    if (open_.empty() || (*values_)[open_.back()].type == Value::Type::object) v.key = key_;
     fill(v);
-    const std::size_t index = values_.size() - 1;
-    values_[index].end = index + 1;
+    const std::size_t index = values_->size() - 1;
+    (*values_)[index].end = index + 1;
     if (top) take();
     return true;
   }
@@ -193,12 +202,12 @@ class Receiver {
         return true;
       }
     }
-    if ((depth_ == 3 && section_ && open_.empty()) || (depth_ == 2 && open_.empty())) values_.clear();
-    Value& v = values_.add();
+    if ((depth_ == 3 && section_ && open_.empty()) || (depth_ == 2 && open_.empty())) begin();
+    Value& v = values_->add();
     v.type = type;
     v.integer = false;
-    if (open_.empty() || values_[open_.back()].type == Value::Type::object) v.key = key_;
-    open_.push_back(values_.size() - 1);
+    if (open_.empty() || (*values_)[open_.back()].type == Value::Type::object) v.key = key_;
+    open_.push_back(values_->size() - 1);
     return true;
   }
 
@@ -209,7 +218,7 @@ class Receiver {
       skip_section_ = false;
       return true;
     }
-    values_[open_.back()].end = values_.size();
+    (*values_)[open_.back()].end = values_->size();
     open_.pop_back();
     if (open_.empty()) take();
     return true;
@@ -225,18 +234,19 @@ class Receiver {
   void take() {
     if (skip_section_) return;
     if (section_) {
-      if (values_[0].type == Value::Type::object)
-        elements_.read(*section_, values_);
+      const Value& element = (*values_)[0];
+      if (element.type == Value::Type::object)
+        elements_.push(*section_);
       else
-        root(std::string(section_name(*section_)) + " holds " + case_file::shown(values_[0]),
+        root(std::string(section_name(*section_)) + " holds " + case_file::shown(element),
              "must hold objects, { ... }", "write each element as an object");
       return;
     }
-    const Value& v = values_[0];
+    const Value& v = root_values_[0];
     if (v.key.rfind("x_", 0) == 0) {
       if (!see(v.key)) return;
       network_.user_fields.push_back({v.key, {}});
-      case_file::append_json(network_.user_fields.back().json_text, values_, 0);
+      case_file::append_json(network_.user_fields.back().json_text, root_values_, 0);
       return;
     }
     if (std::find(root_fields().begin(), root_fields().end(), v.key) == root_fields().end()) {
@@ -295,9 +305,10 @@ class Receiver {
 
   Network& network_;
   Complaints& complaints_;
-  ElementReader& elements_;
+  ElementQueue& elements_;
   std::string_view text_;
-  Values values_;
+  Values root_values_;
+  Values* values_ = &root_values_;  // what is being collected
   std::vector<std::size_t> open_;
   std::string key_;
   std::size_t depth_ = 0;
@@ -370,13 +381,18 @@ ReadResult read_case_text(std::string_view text, const std::string& file) {
   if (text.find_first_not_of(" \t\r\n") == std::string_view::npos)
     return failed(file, "the file is empty", "must be one JSON document", "give the file of a case");
   Network network;
-  Complaints complaints(file);
-  ElementReader elements(network, complaints);
-  Receiver receiver(network, complaints, elements, text);
+  Complaints complaints(file), of_elements(file);
+  ElementReader elements(network, of_elements);
+  elements.expect(text.size() / kBytesOfElement);
+  ElementQueue queue(elements);
+  Receiver receiver(network, complaints, queue, text);
   json::sax_parse(text.begin(), text.end(), &receiver);
+  queue.finish();
+  complaints.join(of_elements);
   if (!receiver.gave_up()) {
     receiver.finish();
     elements.resolve_references();
+    complaints.join(of_elements);
     if (network.buses.empty() && complaints.empty())
       complaints.add(0, {}, "buses is empty", "must be a list of at least one bus", "add the buses");
     for (const Finding& finding : judge(network, [&](ElementRef ref) { return elements.is_bad(ref); })) {

@@ -99,6 +99,12 @@ void Complaints::add(std::size_t order, std::string element, std::string fault, 
       {order, {file_, std::move(element), std::move(fault), std::move(allowed), std::move(remedy)}});
 }
 
+void Complaints::join(Complaints& other) {
+  errors_.insert(errors_.end(), std::make_move_iterator(other.errors_.begin()),
+                 std::make_move_iterator(other.errors_.end()));
+  other.errors_.clear();
+}
+
 std::vector<InputError> Complaints::take() {
   std::stable_sort(errors_.begin(), errors_.end(),
                    [](const Placed& a, const Placed& b) { return a.order < b.order; });

@@ -16,6 +16,8 @@ class Complaints {
   explicit Complaints(std::string file) : file_(std::move(file)) {}
   void add(std::size_t order, std::string element, std::string fault, std::string allowed,
            std::string remedy);
+  /// Takes those of `other` too and leaves it empty.
+  void join(Complaints& other);
   /// Sorted by order; the collection is empty afterwards.
   [[nodiscard]] std::vector<InputError> take();
   [[nodiscard]] bool empty() const { return errors_.empty(); }
@@ -45,6 +47,8 @@ class ElementReader {
  public:
   ElementReader(Network& network, Complaints& complaints) : network_(network), complaints_(complaints) {}
 
+  /// Makes room for the ids of so many elements.
+  void expect(std::size_t elements) { ids_.reserve(elements); }
   /// values[0] is the element's object. Appends the element to its section.
   void read(ElementKind kind, const Values& values);
   /// After the last section.

@@ -9,7 +9,7 @@ namespace {
 constexpr std::size_t kLargePage = std::size_t{1} << 21;
 
 void* allocate(std::size_t size) noexcept {
-  if (size < 2 * kLargePage) return std::malloc(size == 0 ? 1 : size);
+  if (size < kLargePage) return std::malloc(size == 0 ? 1 : size);
   void* block = std::aligned_alloc(kLargePage, (size + kLargePage - 1) / kLargePage * kLargePage);
   if (block != nullptr) ::madvise(block, size, MADV_HUGEPAGE);  // a wish: where it fails, small pages serve
   return block;
