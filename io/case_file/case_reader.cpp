@@ -375,9 +375,10 @@ InputError located(const std::string& file, const Network& network, const Findin
   return error;
 }
 
-ReadResult read_case_text(std::string_view text, const std::string& file) {
+namespace {
+
+ReadResult read_text(std::string_view text, const std::string& file) {
   ReadResult result;
-  auto digest = std::async(std::launch::async, [text] { return sha256(text); });
   if (text.find_first_not_of(" \t\r\n") == std::string_view::npos)
     return failed(file, "the file is empty", "must be one JSON document", "give the file of a case");
   Network network;
@@ -404,10 +405,23 @@ ReadResult read_case_text(std::string_view text, const std::string& file) {
                        error.allowed, error.remedy);
     }
   }
-  result.sha256 = digest.get();
   result.errors = complaints.take();
   if (result.errors.empty()) result.network = std::move(network);
   return result;
+}
+
+// The digest is made when it is asked for: not every report names it.
+ReadResult read_owned(std::string text, const std::string& file) {
+  const auto kept = std::make_shared<const std::string>(std::move(text));
+  ReadResult result = read_text(*kept, file);
+  result.sha256 = std::async(std::launch::deferred, [kept] { return sha256(*kept); });
+  return result;
+}
+
+}  // namespace
+
+ReadResult read_case_text(std::string_view text, const std::string& file) {
+  return read_owned(std::string(text), file);
 }
 
 ReadResult read_case(const std::filesystem::path& path) {
@@ -415,7 +429,7 @@ ReadResult read_case(const std::filesystem::path& path) {
   std::string text;
   if (name == "-") {
     text.assign(std::istreambuf_iterator<char>(std::cin), {});
-    return read_case_text(text, "standard input");
+    return read_owned(std::move(text), "standard input");
   }
   std::error_code ignored;
   if (std::filesystem::is_directory(path, ignored))
@@ -435,7 +449,7 @@ ReadResult read_case(const std::filesystem::path& path) {
   while (in.read(buffer, sizeof buffer) || in.gcount() > 0)
     text.append(buffer, static_cast<std::size_t>(in.gcount()));
   if (in.bad()) return failed(name, "cannot be read to its end", "must be readable", "check the disk");
-  return read_case_text(text, name);
+  return read_owned(std::move(text), name);
 }
 
 }  // namespace kiloamp

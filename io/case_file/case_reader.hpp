@@ -1,6 +1,7 @@
 // A case file becomes a Network, or a list of located errors.
 #pragma once
 #include <filesystem>
+#include <future>
 #include <string>
 #include <string_view>
 #include <vector>
@@ -30,7 +31,8 @@ struct ReadResult {
   std::optional<Network> network;   ///< empty exactly when there are errors
   std::vector<InputError> errors;   ///< in the order of the file
   std::vector<InputError> remarks;  ///< values outside their usual range; they stop nothing
-  std::string sha256;               ///< of the bytes that were read, lower-case hexadecimal
+  /// Of the bytes that were read, lower-case hexadecimal; computed when it is first asked for.
+  std::shared_future<std::string> sha256;
 };
 
 /// Reads by events, one element at a time: memory is that of the network, the text and one element.

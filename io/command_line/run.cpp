@@ -117,7 +117,7 @@ std::unique_ptr<FaultReport> make_report(const Command& c, const Studies& studie
 ReportFacts facts_of(const Command& c, const ReadResult& read) {
   return {c.verb,
           c.case_file == "-" ? "standard input" : c.case_file,
-          read.sha256,
+          c.format == "csv" ? std::string() : read.sha256.get(),
           read.remarks.size(),
           c.contributions,
           c.verb == "fault" || c.study.fault.depth > 0,
