@@ -12,7 +12,8 @@ std::string check_text(const Study& study, const std::string& file) {
   for_each_section(n, [&](ElementKind kind, const auto& section) {
     if (section.empty()) return;
     if (!counts.empty()) counts += ", ";
-    counts += std::to_string(section.size()) + " " + section_name(kind);
+    counts +=
+        std::to_string(section.size()) + " " + (section.size() == 1 ? kind_name(kind) : section_name(kind));
   });
   for (char& c : counts)
     if (c == '_') c = ' ';

@@ -108,6 +108,31 @@ BOOST_AUTO_TEST_CASE(unit_and_generator_factors_of_the_eight_node_network) {
   BOOST_TEST(near(k_g(10, 10.5, 0, 1.1, 0.1, 0.6), 0.988320, 1e-6));
 }
 
+// What each factor is for: multiplied out, the corrected impedance drives the current of the machine's or the
+// transformer's own voltage. IEC 60909-0:2016, 6.3.3, 6.6.1, 6.7.1, 6.7.2, from memory.
+BOOST_AUTO_TEST_CASE(factors_multiplied_out_at_many_points) {
+  for (const double x : {0.02, 0.08, 0.15, 0.3})
+    for (const double cosine : {0.7, 0.8, 0.9, 1.0})
+      for (const double c : {0.95, 1.05, 1.1})
+        for (const double p : {0.0, 0.05, 0.1}) {
+          const double sine = std::sqrt(1 - cosine * cosine);
+          BOOST_TEST(near(k_t(c, x) * (1 + 0.6 * x), 0.95 * c, 1e-14));
+          BOOST_TEST(near(k_t_known_load(c, x, {0.98, 0.7, sine}) * (1 + x * 0.7 * sine), 0.98 * c, 1e-14));
+          BOOST_TEST(near(k_g(10, 10.5, p, c, x, sine) * 10.5 * (1 + p) * (1 + x * sine), 10 * c, 1e-13));
+          UnitData unit{110, 10.5, 115, 10, x, 0.12, sine};
+          unit.c_max = c;
+          const double ratio = 110 * 10 / (10.5 * 115);
+          BOOST_TEST(near(k_s(unit) * (1 + std::abs(x - 0.12) * sine), ratio * ratio * c, 1e-13));
+          unit.pg = p;
+          for (const double pt : {-0.05, 0.0, 0.05}) {
+            unit.pt = pt;
+            BOOST_TEST(near(k_so(unit) * (1 + p) * (1 + x * sine), ratio * (1 + pt) * c, 1e-13));
+          }
+          BOOST_TEST(near(inside_unit(unit, false).generator * (1 + p) * (1 + x * sine), c, 1e-13));
+          BOOST_TEST(near(inside_unit(unit, false).transformer * (1 + p) * (1 - 0.12 * sine), c, 1e-13));
+        }
+}
+
 BOOST_AUTO_TEST_CASE(factors_inside_a_unit) {
   UnitData unit{110, 10.5, 120, 10.5, 0.16, 0.12, 0.6};
   unit.pg = 0.05;
