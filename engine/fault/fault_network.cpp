@@ -63,16 +63,7 @@ void FaultNetwork::assemble(int threads) {
       }
     }
   }
-  for (int s = 0; s < 3; ++s) {
-    std::vector<bool> pinned(n, false);
-    for (const Node node : m.pinned[s]) {
-      pinned[at(node)] = true;
-      values.diagonal[at(node)][s] = 1.0;
-    }
-    for (std::size_t e = 0; e < edges_.size(); ++e)
-      if (pinned[static_cast<std::size_t>(edges_[e].i)] || pinned[static_cast<std::size_t>(edges_[e].j)])
-        values.off_diagonal[e][s] = 0.0;
-  }
+  for (int s = 0; s < 3; ++s) pin(m.pinned[s], s, values);
   const auto same = [](const auto& entry) { return entry[kPositive] == entry[kNegative]; };
   negative_is_positive_ = std::all_of(values.diagonal.begin(), values.diagonal.end(), same) &&
                           std::all_of(values.off_diagonal.begin(), values.off_diagonal.end(), same);
@@ -104,8 +95,14 @@ void FaultNetwork::put_positive(const SequenceModel& m, int lane, sparse::Values
       }
     }
   }
-  std::vector<bool> pinned(m.node_count(), false);
-  for (const Node node : m.pinned[kPositive]) {
+  pin(m.pinned[kPositive], lane, values);
+}
+
+// Potential 0 at each of the nodes in one lane: its own equation, and no part in the others'.
+void FaultNetwork::pin(const std::vector<Node>& nodes, int lane, sparse::Values<Complex, 3>& values) const {
+  const auto s = static_cast<std::size_t>(lane);
+  std::vector<bool> pinned(values.diagonal.size(), false);
+  for (const Node node : nodes) {
     pinned[at(node)] = true;
     values.diagonal[at(node)][s] = 1.0;
   }

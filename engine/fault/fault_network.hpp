@@ -74,6 +74,7 @@ class FaultNetwork {
   };
 
   void assemble(int threads);
+  void pin(const std::vector<Node>& nodes, int lane, sparse::Values<Complex, 3>& values) const;
   void prepare_switches();
   [[nodiscard]] std::int32_t edge_between(Node a, Node b) const;
   [[nodiscard]] BySequence<Complex> z_to(Node j, Node k, const Reach& reach) const;

@@ -74,6 +74,10 @@ void judge_neutral(Findings& out, ElementRef ref, const char* field, const std::
 
 void judge_level(Findings& out, ElementRef ref, const std::string& name, const FeederLevel& level,
                  double nominal_kv) {
+  if (level.is_outright() && level.voltage_factor)
+    out.error(ref, name + ".voltage_factor", "given with impedances",
+              "says at which voltage a fault level was computed; impedances need none",
+              "leave it out, or give the fault level");
   if (nominal_kv <= 0 || level.is_outright() || (!level.three_phase_ka && !level.three_phase_mva) ||
       !level.x_over_r)
     return;

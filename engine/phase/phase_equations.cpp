@@ -76,15 +76,15 @@ void PhaseEquations::number_nodes(const Network& network) {
   }
   for (std::size_t b = 0; b < network.buses.size(); ++b) {
     if (node_of_bus_[b] >= 0 || !network.buses[b].is_in_service()) continue;
-    std::vector<std::size_t> todo{b};
+    std::vector<std::size_t> reached{b};
     node_of_bus_[b] = nodes_;
-    while (!todo.empty()) {
-      const std::size_t here = todo.back();
-      todo.pop_back();
+    while (!reached.empty()) {
+      const std::size_t here = reached.back();
+      reached.pop_back();
       for (const std::size_t next : over[here]) {
         if (node_of_bus_[next] >= 0) continue;
         node_of_bus_[next] = nodes_;
-        todo.push_back(next);
+        reached.push_back(next);
       }
     }
     ++nodes_;

@@ -64,7 +64,7 @@ void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<s
                (m.xd_transient_percent || m.td_subtransient_s || m.td_transient_s || m.ta_s);
       }));
   if (decaying > 0)
-    warnings.push_back("transient reactances and time constants of " +
+    warnings.push_back("transient and synchronous reactances, rotor and time constants of " +
                        counted(decaying, "machine", "machines") +
                        " not used: this study follows no decay in time");
   const auto devices = live_count(n.breakers) + live_count(n.fuses);
@@ -151,11 +151,7 @@ void Study::prepare() {
   using Milliseconds = std::chrono::duration<double, std::milli>;
   timing_ = {Milliseconds(modelled - start).count(),
              Milliseconds(std::chrono::steady_clock::now() - modelled).count()};
-  for (const iec60909::Correction& c : corrections_)
-    if (as_given_ && c.element.kind == ElementKind::synchronous_machine && c.name != "K_G")
-      for (std::uint32_t u = 0; u < network_.power_station_units.size(); ++u)
-        if (network_.power_station_units[u].machine == c.element.index)
-          inside_.emplace_back(model_.node_of_bus[at(network_.synchronous_machines[c.element.index].bus)], u);
+  find_insides();
   warn_of_unused(network_, options_, warnings_);
   if (evaluation_)
     warnings_.insert(warnings_.end(), evaluation_->notes().begin(), evaluation_->notes().end());
@@ -185,16 +181,31 @@ void Study::correct() {
   if (!tolerance.elements.empty()) defaults_.push_back(std::move(tolerance));
 }
 
-std::unique_ptr<Study> Study::inside_unit(BusIndex bus) const {
-  for (const auto& [node, unit] : inside_) {
-    if (node != model_.node_of_bus[at(bus)]) continue;
-    StudyOptions options = options_;
-    options.scenario.reset();  // as_given_ is in its state
-    options.inside_unit = unit;
-    options.buses = {bus};
-    return std::make_unique<Study>(Network(*as_given_), options);
+void Study::find_insides() {
+  if (!as_given_) return;
+  std::vector<bool> corrected(network_.synchronous_machines.size(), false);
+  for (const iec60909::Correction& c : corrections_)
+    if (c.element.kind == ElementKind::synchronous_machine) corrected[c.element.index] = true;
+  for (std::uint32_t u = 0; u < network_.power_station_units.size(); ++u) {
+    const PowerStationUnit& unit = network_.power_station_units[u];
+    const SynchronousMachine& machine = network_.synchronous_machines[unit.machine];
+    const Transformer& t = network_.transformers[unit.transformer];
+    if (unit.is_in_service() && corrected[unit.machine] && is_live(network_, t, t.hv_bus, t.lv_bus))
+      inside_.emplace_back(model_.node_of_bus[at(machine.bus)], u);
   }
-  return nullptr;
+  std::sort(inside_.begin(), inside_.end());
+}
+
+std::unique_ptr<Study> Study::inside_unit(BusIndex bus) const {
+  const Node node = model_.node_of_bus[at(bus)];
+  const auto found = std::lower_bound(inside_.begin(), inside_.end(), node,
+                                      [](const auto& entry, Node wanted) { return entry.first < wanted; });
+  if (found == inside_.end() || found->first != node) return nullptr;
+  StudyOptions options = options_;
+  options.scenario.reset();  // as_given_ is in its state
+  options.inside_unit = found->second;
+  options.buses = {bus};
+  return std::make_unique<Study>(Network(*as_given_), options);
 }
 
 void FaultLoop::at_bus(BusIndex bus, const FaultVisit& visit) {

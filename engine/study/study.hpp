@@ -32,8 +32,8 @@ struct StudyOptions {
   bool include_shunts = false;
   std::vector<FaultKind> kinds{kAllFaults.begin(), kAllFaults.end()};
   std::vector<BusIndex> buses;  ///< empty: all buses in service
-  /// IEC 60909: the power station unit between whose machine and transformer the faults lie. FaultLoop sets
-  /// it for the buses where it is needed.
+  /// IEC 60909: the power station unit between whose machine and transformer the faults lie.
+  /// Study::inside_unit sets it for the buses where it is needed.
   std::optional<std::uint32_t> inside_unit;
   Complex phase_ohm = 0, earth_ohm = 0;
   FaultOptions fault;
@@ -94,6 +94,7 @@ class Study {
  private:
   void prepare();
   void correct();
+  void find_insides();
 
   Network network_;
   StudyOptions options_;
@@ -104,7 +105,7 @@ class Study {
   SequenceModel model_;
   std::unique_ptr<FaultSolver> solver_;
   std::unique_ptr<iec60909::Evaluation> evaluation_;
-  std::vector<std::pair<Node, std::uint32_t>> inside_;  ///< nodes inside units
+  std::vector<std::pair<Node, std::uint32_t>> inside_;  ///< nodes inside units, sorted
   std::vector<std::string> warnings_;
   std::vector<BusIndex> wanted_;
   Timing timing_;

@@ -6,7 +6,6 @@
 #include <chrono>
 #include <cmath>
 #include <csignal>
-#include <deque>
 #include <new>
 #include <ostream>
 
@@ -229,7 +228,8 @@ int run_faults(const Command& c, const Studies& studies, const ReadResult& read,
 }
 
 // Which buses a row of a sequence network stands for.
-std::string place_of(const Network& state, const StudyOptions& options, const sparse::NumericalError& error) {
+std::string place_of(Network state, const StudyOptions& options, const sparse::NumericalError& error) {
+  (void)fill_defaults(state);  // they may be missing where the first of two studies failed
   const SequenceModel model = build_sequence_model(state, {options.include_shunts});
   static constexpr const char* kNames[] = {"zero", "positive", "negative"};
   std::string text = std::string(kNames[error.lane()]) + " sequence, near bus ";

@@ -122,7 +122,8 @@ void Evaluation::find_converters() {
       std::to_string(sources.size()) +
       (sources.size() == 1 ? " full-converter source taken as constant current"
                            : " full-converter sources taken as constant currents") +
-      ", added by magnitude (6.9), also at tmin and in the steady state: obtain the maker's values");
+      ", added by magnitude (6.9), also at tmin and in the steady state, their angle and negative sequence "
+      "not used: obtain the maker's values. Contributions and currents of outage studies are without them");
   converter_pu_ = weighted_transfer_pu(*solver_, [&] {
     std::vector<std::pair<Node, double>> list;
     for (const Source& s : sources) list.emplace_back(s.node, s.current_pu);
