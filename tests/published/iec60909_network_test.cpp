@@ -111,8 +111,8 @@ BOOST_AUTO_TEST_CASE(eight_node_network_line_to_earth) {
       near(solve(c.study(), c.bus("N3"), FaultKind::line_to_ground).quantities.ikss_ka, 10.4106, 3e-4));
 }
 
-// Source: IEC TR 60909-4:2000, clause 5, power station unit at 220 kV: from memory, recomputed (CHECKS of
-// that recomputation: K_S 0.912880 with x_T = uk; tolerance 0.001, 0.02 ohm, 0.002 kA).
+// Source: IEC TR 60909-4:2000, clause 5, power station unit at 220 kV: from memory, recomputed
+// (K_S 0.912880 with x_T = uk there; tolerance 0.001, 0.02 ohm, 0.002 kA).
 BOOST_AUTO_TEST_CASE(power_station_unit_with_on_load_tap_changer) {
   const CaseStudy c(read_text(R"({"format": "kiloamp-case", "version": 1, "frequency_hz": 50,
     "buses": [{"id": "220", "nominal_kv": 220}, {"id": "21", "nominal_kv": 21}],
