@@ -97,7 +97,7 @@ void OutageWorker::put(Solver& solver, int slot, const OutageChange& o, std::siz
 
 void OutageWorker::side_by_side(std::span<const OutageChange> outages, std::span<const std::size_t> which,
                                 const Visit& visit) {
-  int columns = 0;
+  int columns = 1;  // an outage that changes nothing still reads solutions, of zeros
   for (const std::size_t k : which) columns = std::max(columns, outages[k].columns());
   for (std::size_t r = 0; r < static_cast<std::size_t>(columns); ++r) {
     solvers_[r].clear();
