@@ -1,5 +1,5 @@
-// Breakers, fuses and relays: what stands on a bus or at a branch's terminal and must cope with the fault
-// current.
+// Breakers, switches, fuses, switchboards and relays: what stands on a bus or at a branch's terminal and must
+// cope with the fault current.
 #pragma once
 #include "engine/network/identifiers.hpp"
 
@@ -8,17 +8,27 @@ namespace kiloamp {
 /// The document a device was rated to, hence the quantities it may be compared with.
 enum class DeviceStandard : std::uint8_t {
   iec62271_100,       ///< high-voltage breaker, IEC
+  iec62271_103,       ///< high-voltage switch, IEC
+  iec62271_200,       ///< metal-enclosed high-voltage switchboard, IEC
   iec60947_2,         ///< low-voltage breaker, IEC
+  iec60947_3,         ///< low-voltage switch, IEC
+  iec61439,           ///< low-voltage switchboard, IEC
   iec60282_1,         ///< high-voltage fuse, IEC
   iec60269,           ///< low-voltage fuse, IEC
   c37_total_current,  ///< breaker rated on total current (before 1964)
   c37_k_factor,       ///< symmetrical rating with voltage range factor K
   c37_constant_ka,    ///< symmetrical rating, constant at every voltage up to the maximum
   c37_13,             ///< low-voltage power breaker
+  c37_20,             ///< metal-enclosed switchgear
   ul489,              ///< moulded-case or insulated-case breaker
   c37_41,             ///< medium-voltage fuse
   ul248               ///< low-voltage fuse
 };
+/// Devices of one family are rated with the currents of one calculation and never judged with the other's.
+enum class DeviceFamily : std::uint8_t { iec, ansi };
+[[nodiscard]] constexpr DeviceFamily family_of(DeviceStandard standard) {
+  return standard <= DeviceStandard::iec60269 ? DeviceFamily::iec : DeviceFamily::ansi;
+}
 
 /// Figures of a rating plate; each device writes those that its standard knows.
 struct Device : Element {
@@ -34,9 +44,15 @@ struct Device : Element {
   std::optional<double> interrupting_time_cycles, contact_parting_cycles;
   std::optional<double> test_power_factor;
   std::optional<bool> instantaneous_trip, fused;
+  /// The owner's points of the standard's curve for faults with local ac decay: multiplying factor against
+  /// X/R, ascending.
+  std::optional<std::vector<double>> local_curve_x_over_r, local_curve_factor;
+  std::optional<double> peak_withstand_ka;  ///< of a switchboard
 };
 struct Breaker : Device {};
 struct Fuse : Device {};
+/// Busbars and their enclosure: the total at the bus.
+struct Switchboard : Device {};
 
 enum class RelayFunction : std::uint8_t {
   phase_overcurrent,

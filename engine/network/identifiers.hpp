@@ -31,6 +31,7 @@ enum class ElementKind : std::uint8_t {
   power_station_unit,
   breaker,
   fuse,
+  switchboard,
   relay,
   scenario
 };

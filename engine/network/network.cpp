@@ -27,6 +27,7 @@ constexpr KindNames kNames[] = {
     {"power_station_units", "power station unit"},
     {"breakers", "breaker"},
     {"fuses", "fuse"},
+    {"switchboards", "switchboard"},
     {"relays", "relay"},
     {"scenarios", "scenario"},
 };

@@ -48,6 +48,7 @@ struct Network {
   std::vector<PowerStationUnit> power_station_units;
   std::vector<Breaker> breakers;
   std::vector<Fuse> fuses;
+  std::vector<Switchboard> switchboards;
   std::vector<Relay> relays;
   std::vector<Scenario> scenarios;
   std::vector<UserField> user_fields;
@@ -86,6 +87,7 @@ void for_each_section(AnyNetwork& n, Visit&& visit) {
   visit(ElementKind::power_station_unit, n.power_station_units);
   visit(ElementKind::breaker, n.breakers);
   visit(ElementKind::fuse, n.fuses);
+  visit(ElementKind::switchboard, n.switchboards);
   visit(ElementKind::relay, n.relays);
   visit(ElementKind::scenario, n.scenarios);
 }

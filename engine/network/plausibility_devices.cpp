@@ -1,4 +1,5 @@
 #include <algorithm>
+#include <functional>
 
 #include "engine/network/judge.hpp"
 #include "engine/network/terminals.hpp"
@@ -17,8 +18,64 @@ void judge_place(Findings& out, ElementRef ref, BusIndex bus, const std::optiona
               "the branch must be connected to the bus", "correct bus or branch");
 }
 
-template <typename Device>
+// What each section may hold, first to last.
+struct Section {
+  std::initializer_list<DeviceStandard> standards;
+  const char* words;
+};
+using S = DeviceStandard;
+const Section kOfBreakers{
+    {S::iec62271_100, S::iec62271_103, S::iec60947_2, S::iec60947_3, S::c37_total_current, S::c37_k_factor,
+     S::c37_constant_ka, S::c37_13, S::ul489},
+    "iec62271-100, iec62271-103, iec60947-2, iec60947-3, c37-total-current, c37-k-factor, "
+    "c37-constant-ka, c37.13 or ul489"};
+const Section kOfFuses{{S::iec60282_1, S::iec60269, S::c37_41, S::ul248},
+                       "iec60282-1, iec60269, c37.41 or ul248"};
+const Section kOfSwitchboards{{S::iec62271_200, S::iec61439, S::c37_20}, "iec62271-200, iec61439 or c37.20"};
+
+void judge_standard(Findings& out, ElementRef ref, const Device& d, const Section& section) {
+  if (std::find(section.standards.begin(), section.standards.end(), d.standard) == section.standards.end())
+    out.error(ref, "standard", std::string("not one for a ") + kind_name(ref.kind),
+              std::string("must be ") + section.words, "correct it, or move the device to the right section");
+}
+
+// K = highest over lowest voltage at which the capability rises with falling voltage; rated voltages are
+// rounded.
+constexpr double kRoundedPlate = 0.995;
+
+void judge_voltage_range(Findings& out, ElementRef ref, const Device& d) {
+  if (d.standard != S::c37_k_factor || !d.rated_kv || !d.k_factor) return;
+  if (*d.k_factor < 1) {
+    out.error(ref, "k_factor", number_text(*d.k_factor), "must be at least 1",
+              "K is the highest over the lowest voltage of the breaker's range");
+    return;
+  }
+  const double nominal = out.network().bus(d.bus).nominal_kv, lowest = *d.rated_kv / *d.k_factor;
+  if (nominal < lowest * kRoundedPlate)
+    out.error(ref, "rated_kv, k_factor",
+              number_text(*d.rated_kv) + " and " + number_text(*d.k_factor) + " at bus \"" +
+                  out.network().bus(d.bus).id + "\" of " + number_text(nominal) + " kV",
+              "the bus must lie within the breaker's voltage range, rated_kv / K to rated_kv",
+              "check the plate; below the range the breaker states no capability");
+}
+
+void judge_local_curve(Findings& out, ElementRef ref, const Device& d) {
+  if (!d.local_curve_x_over_r && !d.local_curve_factor) return;
+  const std::vector<double> none;
+  const auto &x = d.local_curve_x_over_r ? *d.local_curve_x_over_r : none,
+             &factor = d.local_curve_factor ? *d.local_curve_factor : none;
+  const bool ascending = std::adjacent_find(x.begin(), x.end(), std::greater_equal<>()) == x.end();
+  if (x.size() != factor.size() || x.size() < 2 || !ascending)
+    out.error(ref, "local_curve_x_over_r, local_curve_factor",
+              std::to_string(x.size()) + " and " + std::to_string(factor.size()) + " points" +
+                  (ascending ? "" : ", X/R not ascending"),
+              "must be at least two points, as many factors as X/R, X/R ascending",
+              "read the points from the curve of the standard in order");
+}
+
 void judge_ratings(Findings& out, ElementRef ref, const Device& d) {
+  judge_voltage_range(out, ref, d);
+  judge_local_curve(out, ref, d);
   const double nominal = out.network().bus(d.bus).nominal_kv;
   if (d.rated_kv && nominal > 0 && *d.rated_kv < nominal)
     out.error(ref, "rated_kv",
@@ -35,12 +92,19 @@ void judge_devices(Findings& out) {
   for (std::uint32_t i = 0; i < n.breakers.size(); ++i) {
     if (!out.judges({ElementKind::breaker, i})) continue;
     judge_place(out, {ElementKind::breaker, i}, n.breakers[i].bus, n.breakers[i].branch);
+    judge_standard(out, {ElementKind::breaker, i}, n.breakers[i], kOfBreakers);
     judge_ratings(out, {ElementKind::breaker, i}, n.breakers[i]);
   }
   for (std::uint32_t i = 0; i < n.fuses.size(); ++i) {
     if (!out.judges({ElementKind::fuse, i})) continue;
     judge_place(out, {ElementKind::fuse, i}, n.fuses[i].bus, n.fuses[i].branch);
+    judge_standard(out, {ElementKind::fuse, i}, n.fuses[i], kOfFuses);
     judge_ratings(out, {ElementKind::fuse, i}, n.fuses[i]);
+  }
+  for (std::uint32_t i = 0; i < n.switchboards.size(); ++i) {
+    if (!out.judges({ElementKind::switchboard, i})) continue;
+    judge_standard(out, {ElementKind::switchboard, i}, n.switchboards[i], kOfSwitchboards);
+    judge_ratings(out, {ElementKind::switchboard, i}, n.switchboards[i]);
   }
   for (std::uint32_t i = 0; i < n.relays.size(); ++i)
     if (out.judges({ElementKind::relay, i}))

@@ -55,6 +55,7 @@ struct SynchronousMachine : Element {
   std::optional<Neutral> neutral;
   std::optional<double> td_subtransient_s, td_transient_s, ta_s;
   std::optional<Rotor> rotor;
+  std::optional<bool> damper_winding;
   std::optional<Excitation> excitation;
   std::optional<double> voltage_range_percent;   ///< how far the generator voltage lies above rated for good
   std::optional<double> lambda_max, lambda_min;  ///< steady-state short-circuit current over rated current

@@ -37,6 +37,8 @@ std::vector<BusIndex> buses_of(const Network& n, ElementRef ref) {
       return {n.breakers[i].bus};
     case ElementKind::fuse:
       return {n.fuses[i].bus};
+    case ElementKind::switchboard:
+      return {n.switchboards[i].bus};
     case ElementKind::relay:
       return {n.relays[i].bus};
     case ElementKind::mutual_coupling:

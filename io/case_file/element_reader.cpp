@@ -399,11 +399,11 @@ void ElementReader::read_list(const Field& field, const Values& values, std::siz
       complain(scope, item_name + " = " + shown(item),
                item.type == Value::Type::number ? range_text(field.range) : "must be a number",
                "correct the value");
-    } else if (index < field.fixed_count) {
+    } else if (field.fixed_count == 0 || index < field.fixed_count) {
       field.set(scope.storage, item, index);
     }
   }
-  if (field.type == FieldType::number_list && index != field.fixed_count)
+  if (field.type == FieldType::number_list && field.fixed_count > 0 && index != field.fixed_count)
     complain(scope, name + " has " + std::to_string(index) + " numbers", type_text(field),
              "give exactly two");
 }

@@ -92,7 +92,7 @@ struct Table {
 
 /// The tables of the sections, by ElementKind.
 [[nodiscard]] const Table& table(ElementKind kind);
-inline constexpr std::size_t kSections = 18;
+inline constexpr std::size_t kSections = 19;
 
 /// Shortest text that reads back as the same number.
 void append_number(std::string& out, double value);

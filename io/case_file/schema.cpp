@@ -73,8 +73,9 @@ Json field_schema(const Field& field) {
     case FieldType::reference_list:
       return {{"type", "array"}, {"items", reference}};
     case FieldType::number_list: {
-      const Json list{
-          {"type", "array"}, {"items", number_schema(field.range, false)}, {"minItems", 2}, {"maxItems", 2}};
+      Json list{{"type", "array"}, {"items", number_schema(field.range, false)}};
+      if (field.fixed_count > 0)
+        list.update({{"minItems", field.fixed_count}, {"maxItems", field.fixed_count}});
       return field.or_number ? Json{{"oneOf", {number_schema(field.range, false), list}}} : list;
     }
   }

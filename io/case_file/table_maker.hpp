@@ -35,6 +35,9 @@ const typename Bare<Member>::type* given(const Member& member) {
 
 }  // namespace detail
 
+/// Says that a list may have any number of entries.
+struct AnyCount {};
+
 /// `E` is the struct that the table describes.
 template <typename E>
 class TableMaker {
@@ -158,36 +161,15 @@ class TableMaker {
   /// Numbers in an array, in an optional vector or optional std::array<double, 2>.
   template <auto M>
   TableMaker& numbers(std::string_view name, Range range, bool or_number = false) {
-    Field f = base(name, FieldType::number_list, false, {});
-    f.range = range;
+    Field f = number_list<M>(name, range);
     f.fixed_count = 2;
     f.or_number = or_number;
-    f.set = [](void* e, const Value& v, std::size_t index) {
-      auto& member = static_cast<E*>(e)->*M;
-      if (!member) member.emplace();
-      if constexpr (requires { member->push_back(0.0); }) {
-        member->push_back(v.number);
-      } else {
-        (*member)[index] = v.number;
-      }
-    };
-    f.write = [](const void* e, const Network&, std::string& out) {
-      const auto& member = static_cast<const E*>(e)->*M;
-      if (!member) return false;
-      if (member->size() == 1) {
-        append_number(out, member->front());
-        return true;
-      }
-      const char* gap = "[";
-      for (const double value : *member) {
-        out += gap;
-        append_number(out, value);
-        gap = ", ";
-      }
-      out += ']';
-      return true;
-    };
     return add(f);
+  }
+  /// A list of any length.
+  template <auto M>
+  TableMaker& numbers(std::string_view name, Range range, AnyCount) {
+    return add(number_list<M>(name, range));
   }
 
   template <auto M>
@@ -250,6 +232,37 @@ class TableMaker {
     const auto* value = detail::given(static_cast<const E*>(e)->*M);
     if (value != nullptr) append_quoted(out, detail::id_of(n, {K, static_cast<std::uint32_t>(*value)}));
     return value != nullptr;
+  }
+  template <auto M>
+  static Field number_list(std::string_view name, Range range) {
+    Field f = base(name, FieldType::number_list, false, {});
+    f.range = range;
+    f.set = [](void* e, const Value& v, std::size_t index) {
+      auto& member = static_cast<E*>(e)->*M;
+      if (!member) member.emplace();
+      if constexpr (requires { member->push_back(0.0); }) {
+        member->push_back(v.number);
+      } else {
+        (*member)[index] = v.number;
+      }
+    };
+    f.write = [](const void* e, const Network&, std::string& out) {
+      const auto& member = static_cast<const E*>(e)->*M;
+      if (!member) return false;
+      if (member->size() == 1) {
+        append_number(out, member->front());
+        return true;
+      }
+      const char* gap = "[";
+      for (const double value : *member) {
+        out += gap;
+        append_number(out, value);
+        gap = ", ";
+      }
+      out += ']';
+      return true;
+    };
+    return f;
   }
   static Field base(std::string_view name, FieldType type, bool required, std::string_view remedy) {
     Field f;

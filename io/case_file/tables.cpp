@@ -1,6 +1,7 @@
 // The fields of every element of a case.
 #include <array>
 
+#include "io/case_file/device_tables.hpp"
 #include "io/case_file/table_maker.hpp"
 
 namespace kiloamp::case_file {
@@ -17,14 +18,6 @@ const Words kNegative{"none", "impedance"};
 const Words kLine{"overhead", "cable"};
 const Words kCore{"three_limb", "five_limb", "shell", "single_phase_bank"};
 const Words kSide{"hv", "mv", "lv"};
-const Words kStandard{"iec62271-100", "iec60947-2",      "iec60282-1", "iec60269", "c37-total-current",
-                      "c37-k-factor", "c37-constant-ka", "c37.13",     "ul489",    "c37.41",
-                      "ul248"};
-const Words kFunction{"phase_overcurrent", "earth_overcurrent", "negative_sequence_overcurrent",
-                      "undervoltage", "residual_overvoltage"};
-const Words kCurve{
-    "definite_time",         "iec_a", "iec_b", "iec_c", "ieee_moderately_inverse", "ieee_very_inverse",
-    "ieee_extremely_inverse"};
 const Words kFeeders{"max", "min"};
 
 constexpr std::string_view kSign = "check the sign; a series reactance is positive";
@@ -110,20 +103,6 @@ const Table& pair_table() {
   return t;
 }
 
-const Table& relay_element_table() {
-  using R = RelayElement;
-  static const Table t = TableMaker<R>(ElementKind::relay, false)
-                             .word<&R::function, &kFunction>("function", true)
-                             .number<&R::pickup_a>("pickup_a", Range::positive)
-                             .number<&R::pickup_v>("pickup_v", Range::positive)
-                             .word<&R::curve, &kCurve>("curve", true)
-                             .number<&R::time_multiplier>("time_multiplier", Range::positive)
-                             .number<&R::time_s>("time_s", Range::non_negative)
-                             .choice({{"pickup_a"}, {"pickup_v"}}, "give the pickup in amperes or in volts")
-                             .done();
-  return t;
-}
-
 // `auto` is a word of the language; its member is spelled out.
 Field vector_group_field(void (*set)(void*, const Value&, std::size_t),
                          bool (*write)(const void*, const Network&, std::string&)) {
@@ -195,6 +174,7 @@ Table machines() {
       .number<&M::td_transient_s>("td_transient_s", Range::positive)
       .number<&M::ta_s>("ta_s", Range::positive)
       .word<&M::rotor, &kRotor>("rotor")
+      .boolean<&M::damper_winding>("damper_winding")
       .word<&M::excitation, &kExcitation>("excitation")
       .number<&M::voltage_range_percent>("voltage_range_percent", Range::non_negative)
       .number<&M::lambda_max>("lambda_max", Range::positive)
@@ -397,51 +377,6 @@ Table units() {
       .done();
 }
 
-template <typename D, auto Section>
-Table devices(ElementKind kind) {
-  return TableMaker<D>(kind)
-      .template section<Section>()
-      .template reference<&D::bus>("bus", Target::bus)
-      .template reference<&D::branch>("branch", Target::branch, false)
-      .template word<&D::standard, &kStandard>("standard", true)
-      .template number<&D::rated_kv>("rated_kv", Range::positive)
-      .template number<&D::rated_a>("rated_a", Range::positive)
-      .template number<&D::breaking_ka>("breaking_ka", Range::positive)
-      .template number<&D::making_peak_ka>("making_peak_ka", Range::positive)
-      .template number<&D::short_time_ka>("short_time_ka", Range::positive)
-      .template number<&D::short_time_s>("short_time_s", Range::positive)
-      .template number<&D::dc_time_constant_ms>("dc_time_constant_ms", Range::positive)
-      .template number<&D::opening_time_s>("opening_time_s", Range::positive)
-      .template number<&D::icu_ka>("icu_ka", Range::positive)
-      .template number<&D::ics_ka>("ics_ka", Range::positive)
-      .template number<&D::icm_ka>("icm_ka", Range::positive)
-      .template number<&D::icw_ka>("icw_ka", Range::positive)
-      .template number<&D::icw_s>("icw_s", Range::positive)
-      .template number<&D::k_factor>("k_factor", Range::positive)
-      .template number<&D::interrupting_mva>("interrupting_mva", Range::positive)
-      .template number<&D::interrupting_ka>("interrupting_ka", Range::positive)
-      .template number<&D::close_latch_rms_ka>("close_latch_rms_ka", Range::positive)
-      .template number<&D::close_latch_peak_ka>("close_latch_peak_ka", Range::positive)
-      .template number<&D::interrupting_time_cycles>("interrupting_time_cycles", Range::positive)
-      .template number<&D::contact_parting_cycles>("contact_parting_cycles", Range::positive)
-      .template number<&D::test_power_factor>("test_power_factor", Range::fraction)
-      .template boolean<&D::instantaneous_trip>("instantaneous_trip")
-      .template boolean<&D::fused>("fused")
-      .done();
-}
-
-Table relays() {
-  using R = Relay;
-  return TableMaker<R>(ElementKind::relay)
-      .section<&Network::relays>()
-      .reference<&R::bus>("bus", Target::bus)
-      .reference<&R::branch>("branch", Target::branch, false)
-      .numbers<&R::ct_ratio>("ct_ratio", Range::positive)
-      .numbers<&R::vt_ratio>("vt_ratio", Range::positive)
-      .objects<&R::elements>("elements", relay_element_table())
-      .done();
-}
-
 Table scenarios() {
   using S = Scenario;
   return TableMaker<S>(ElementKind::scenario)
@@ -471,9 +406,10 @@ const Table& table(ElementKind kind) {
                                                    shunts(),
                                                    switches(),
                                                    units(),
-                                                   devices<Breaker, &Network::breakers>(ElementKind::breaker),
-                                                   devices<Fuse, &Network::fuses>(ElementKind::fuse),
-                                                   relays(),
+                                                   breakers_table(),
+                                                   fuses_table(),
+                                                   switchboards_table(),
+                                                   relays_table(),
                                                    scenarios()};
   return tables[static_cast<std::size_t>(kind)];
 }
