@@ -15,7 +15,8 @@ void add_product(BySequence<Complex>& sum, const BySequence<Complex>& a, const B
 
 }  // namespace
 
-FaultNetwork::FaultNetwork(const SequenceModel& model, int threads) : model_(&model) {
+FaultNetwork::FaultNetwork(const SequenceModel& model, int threads, const FaultNetwork* like)
+    : model_(&model) {
   slots_.resize(model.terminals.size());
   for (std::uint32_t b = 0; b < model.blocks.size(); ++b) {
     const Block& block = model.blocks[b];
@@ -24,11 +25,11 @@ FaultNetwork::FaultNetwork(const SequenceModel& model, int threads) : model_(&mo
       slots[slots[0].used ? 1 : 0] = {b, p, true};
     }
   }
-  assemble(threads);
+  assemble(threads, like);
   prepare_switches();
 }
 
-void FaultNetwork::assemble(int threads) {
+void FaultNetwork::assemble(int threads, const FaultNetwork* like) {
   const SequenceModel& m = *model_;
   const std::size_t n = m.node_count();
   const auto node_at = [&](const Block& b, std::uint32_t p) {
@@ -67,7 +68,12 @@ void FaultNetwork::assemble(int threads) {
   const auto same = [](const auto& entry) { return entry[kPositive] == entry[kNegative]; };
   negative_is_positive_ = std::all_of(values.diagonal.begin(), values.diagonal.end(), same) &&
                           std::all_of(values.off_diagonal.begin(), values.off_diagonal.end(), same);
-  analysis_ = std::make_shared<const sparse::Analysis>(static_cast<sparse::Index>(n), edges_);
+  const auto same_edge = [&](const auto& a, const auto& b) { return order(a) == order(b); };
+  const bool alike =
+      like != nullptr && like->model_->node_count() == n &&
+      std::equal(edges_.begin(), edges_.end(), like->edges_.begin(), like->edges_.end(), same_edge);
+  analysis_ = alike ? like->analysis_
+                    : std::make_shared<const sparse::Analysis>(static_cast<sparse::Index>(n), edges_);
   factors_ = std::make_unique<sparse::Factorisation<Complex, 3>>(analysis_, values, threads);
   inverse_ = factors_->selected_inverse(threads);
 }
@@ -98,8 +104,34 @@ void FaultNetwork::put_positive(const SequenceModel& m, int lane, sparse::Values
   pin(m.pinned[kPositive], lane, values);
 }
 
+sparse::Values<double, 4> FaultNetwork::separate_values() const {
+  const SequenceModel& m = *model_;
+  assert(m.block_parts.size() == m.block_y.size());
+  sparse::Values<double, 4> values;
+  values.diagonal.resize(m.node_count());
+  values.off_diagonal.resize(edges_.size());
+  for (const Block& block : m.blocks)
+    for (std::uint32_t p = 0; p < block.count; ++p) {
+      const Node i = m.terminals[m.block_terminals[block.first + p]].node;
+      for (std::uint32_t q = p; q < block.count; ++q) {
+        const Node j = m.terminals[m.block_terminals[block.first + q]].node;
+        const SeparateParts& y = m.block_parts[block.first_y + p * block.count + q];
+        auto& place = i == j ? values.diagonal[at(i)]
+                             : values.off_diagonal[static_cast<std::size_t>(edge_between(i, j))];
+        const double times = i == j && p != q ? 2 : 1;
+        place[0] += times * y.x1;
+        place[1] += times * y.x0;
+        place[2] += times * y.r1;
+        place[3] += times * y.r0;
+      }
+    }
+  for (int lane = 0; lane < 4; ++lane) pin(m.pinned[lane % 2 == 0 ? kPositive : kZero], lane, values);
+  return values;
+}
+
 // Potential 0 at each of the nodes in one lane: its own equation, and no part in the others'.
-void FaultNetwork::pin(const std::vector<Node>& nodes, int lane, sparse::Values<Complex, 3>& values) const {
+template <typename Values>
+void FaultNetwork::pin(const std::vector<Node>& nodes, int lane, Values& values) const {
   const auto s = static_cast<std::size_t>(lane);
   std::vector<bool> pinned(values.diagonal.size(), false);
   for (const Node node : nodes) {

@@ -37,7 +37,8 @@ class FaultNetwork {
  public:
   using Inverse = sparse::Factorisation<Complex, 3>::SelectedInverse;
 
-  FaultNetwork(const SequenceModel& model, int threads);
+  /// @param like  may be null; its analysis is used again when its branches join the same nodes
+  FaultNetwork(const SequenceModel& model, int threads, const FaultNetwork* like);
 
   /// A block that a terminal is in, and where.
   struct Slot {
@@ -57,6 +58,8 @@ class FaultNetwork {
   /// `values`, which has this network's pattern (made by empty_values).
   void put_positive(const SequenceModel& other, int lane, sparse::Values<Complex, 3>& values) const;
   [[nodiscard]] sparse::Values<Complex, 3> empty_values() const;
+  /// The model's networks of reactances and resistances in this network's pattern: lanes X1, X0, R1, R0.
+  [[nodiscard]] sparse::Values<double, 4> separate_values() const;
   [[nodiscard]] const std::shared_ptr<const sparse::Analysis>& analysis() const { return analysis_; }
   [[nodiscard]] const SolutionQuality& quality() const { return factors_->accuracy(); }
 
@@ -73,8 +76,9 @@ class FaultNetwork {
     std::vector<double> inverse;  ///< of the grounded Laplacian, (buses - 1)^2, row-major
   };
 
-  void assemble(int threads);
-  void pin(const std::vector<Node>& nodes, int lane, sparse::Values<Complex, 3>& values) const;
+  void assemble(int threads, const FaultNetwork* like);
+  template <typename Values>
+  void pin(const std::vector<Node>& nodes, int lane, Values& values) const;
   void prepare_switches();
   [[nodiscard]] std::int32_t edge_between(Node a, Node b) const;
   [[nodiscard]] BySequence<Complex> z_to(Node j, Node k, const Reach& reach) const;

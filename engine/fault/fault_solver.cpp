@@ -10,8 +10,8 @@ namespace kiloamp {
 using detail::FaultNetwork;
 
 struct FaultSolver::Body {
-  Body(const SequenceModel& model, std::vector<Prefault> given, int threads)
-      : network(model, threads), prefault(std::move(given)) {}
+  Body(const SequenceModel& model, std::vector<Prefault> given, int threads, const FaultNetwork* like)
+      : network(model, threads, like), prefault(std::move(given)) {}
   FaultNetwork network;
   std::vector<Prefault> prefault;
 };
@@ -27,8 +27,11 @@ class FaultSolver::Workspace {
 
 void FaultSolver::WorkspaceDelete::operator()(Workspace* w) const { delete w; }
 
-FaultSolver::FaultSolver(const SequenceModel& model, std::vector<Prefault> prefault_of_bus, int threads)
-    : model_(&model), body_(std::make_unique<Body>(model, std::move(prefault_of_bus), threads)) {}
+FaultSolver::FaultSolver(const SequenceModel& model, std::vector<Prefault> prefault_of_bus, int threads,
+                         const FaultSolver* like)
+    : model_(&model),
+      body_(std::make_unique<Body>(model, std::move(prefault_of_bus), threads,
+                                   like != nullptr ? &like->solved() : nullptr)) {}
 FaultSolver::~FaultSolver() = default;
 
 const SolutionQuality& FaultSolver::quality() const { return body_->network.quality(); }

@@ -35,7 +35,9 @@ using SolutionQuality = BySequence<sparse::Accuracy>;
 class FaultSolver {
  public:
   /// @throws sparse::NumericalError  a sequence network that cannot be solved (resonance); row() is a Node.
-  FaultSolver(const SequenceModel& model, std::vector<Prefault> prefault_of_bus, int threads = 1);
+  /// @param like  a solver of a model whose branches join the same nodes: its ordering is used again
+  FaultSolver(const SequenceModel& model, std::vector<Prefault> prefault_of_bus, int threads = 1,
+              const FaultSolver* like = nullptr);
   ~FaultSolver();
 
   [[nodiscard]] const SequenceModel& model() const { return *model_; }

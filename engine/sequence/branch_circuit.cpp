@@ -4,6 +4,17 @@
 
 namespace kiloamp {
 
+Complex part_of(Complex z, Part part) {
+  if (part == Part::whole) return z;
+  if (part == Part::reactance) return {0, z.imag()};
+  return z.real() != 0 ? z.real() : std::abs(z.imag()) / kLargestElementXOverR;
+}
+
+Complex part_of_shunt(Complex z, Part part) {
+  if (part == Part::whole) return z;
+  return part == Part::reactance ? Complex(0, z.imag()) : Complex(std::abs(z.imag()) * kLargestElementXOverR);
+}
+
 Circuit series_circuit(BusIndex from, BusIndex to, const BySequence<Complex>& z_ohm) {
   Circuit circuit;
   circuit.terminals = 2;

@@ -15,6 +15,19 @@ template <typename T>
 using BySequence = std::array<T, 3>;
 inline constexpr int kZero = 0, kPositive = 1, kNegative = 2;
 
+/// Which part of every impedance a circuit is made of: the whole, or its reactance or resistance alone, as
+/// the separate networks for X/R of the ANSI/IEEE standards need.
+enum class Part : std::uint8_t { whole, reactance, resistance };
+/// Element X/R beyond which no resistance is believed: an element whose data give less (or none) has X / 1000
+/// in the network of resistances.
+inline constexpr double kLargestElementXOverR = 1000;
+/// z; j Im z; or Re z, of which at least |Im z| / kLargestElementXOverR is taken when it is 0.
+[[nodiscard]] Complex part_of(Complex z, Part part);
+/// The same for an impedance that closes a path only as a shunt of its own: charging, capacitor banks,
+/// magnetising branches. It is no resistance to be reduced with others: in the network of resistances it is
+/// kLargestElementXOverR |Im z|.
+[[nodiscard]] Complex part_of_shunt(Complex z, Part part);
+
 /// I = Y V over at most three terminals, per sequence: I_i [A, into the element], V_j [V], so Y in siemens,
 /// symmetric.
 ///
@@ -72,11 +85,12 @@ struct Circuit {
 /// 3 Zn and goes to its bus. Zero, zigzag: no ampere-turns cross. ZN earthed: Z_k0 + 3 Zn to earth; the other
 /// side, if YN earthed: Z_k/2 + j zm0 + 3 Zn. Source: Grainger & Stevenson, Power System Analysis, 1994, ch.
 /// 11 for the star and delta circuits (from memory); zigzag from the balance of ampere-turns on each limb.
-[[nodiscard]] Circuit transformer_circuit(const Transformer& transformer);
+[[nodiscard]] Circuit transformer_circuit(const Transformer& transformer, Part part = Part::whole);
 
 /// Three-winding transformer or autotransformer: star of arms Z_A = (Z_AB + Z_AC - Z_BC) / 2 and cyclic in a
 /// common base, the same from z0 for zero sequence. Autotransformer: the common neutral carries 3 (I0_hv +
 /// I0_mv) amperes through Zn. Terminals: hv, mv and, when lv_bus is given, lv.
-[[nodiscard]] Circuit three_winding_circuit(const ThreeWindingTransformer& transformer);
+[[nodiscard]] Circuit three_winding_circuit(const ThreeWindingTransformer& transformer,
+                                            Part part = Part::whole);
 
 }  // namespace kiloamp

@@ -18,6 +18,13 @@ namespace {
 using detail::Islands;
 using detail::Link;
 
+// An end of a line in a coupled group.
+struct CoupledEnd {
+  Eigen::Index line;
+  BusIndex bus;
+  double sign;
+};
+
 class Builder {
  public:
   Builder(const Network& network, const SequenceOptions& options) : network_(network), options_(options) {}
@@ -47,7 +54,11 @@ class Builder {
   void finish_islands();
   void sort_terminals();
 
-  void add_block(ElementRef element, const Circuit& circuit);
+  /// make(Part) gives the element's circuit.
+  template <typename Make>
+  void add_block(ElementRef element, const Make& make);
+  void add_circuit(ElementRef element, const Circuit& circuit);
+  void add_coupled_y(const Eigen::MatrixXcd& y, const std::vector<CoupledEnd>& ends, Part part);
   void join(const Circuit& circuit);
 
   const Network& network_;
@@ -107,7 +118,22 @@ void Builder::join(const Circuit& c) {
   }
 }
 
-void Builder::add_block(ElementRef element, const Circuit& c) {
+template <typename Make>
+void Builder::add_block(ElementRef element, const Make& make) {
+  add_circuit(element, make(Part::whole));
+  if (!options_.separate_parts) return;
+  const Circuit x = make(Part::reactance), r = make(Part::resistance);
+  for (int i = 0; i < x.terminals; ++i)
+    for (int j = 0; j < x.terminals; ++j) {
+      const double scale =
+          model_.nominal_kv[at(x.bus[i])] * model_.nominal_kv[at(x.bus[j])] / model_.base_mva;
+      model_.block_parts.push_back(
+          {-x.y_siemens[kPositive][i][j].imag() * scale, -x.y_siemens[kZero][i][j].imag() * scale,
+           r.y_siemens[kPositive][i][j].real() * scale, r.y_siemens[kZero][i][j].real() * scale});
+    }
+}
+
+void Builder::add_circuit(ElementRef element, const Circuit& c) {
   Block block{static_cast<std::uint32_t>(model_.block_terminals.size()),
               static_cast<std::uint32_t>(c.terminals), static_cast<std::uint32_t>(model_.block_y.size())};
   for (int i = 0; i < c.terminals; ++i) {
@@ -133,9 +159,14 @@ void Builder::add_block(ElementRef element, const Circuit& c) {
 
 void Builder::add_sources() {
   const auto add = [&](ElementRef ref, BusIndex bus, const BySequence<std::optional<Complex>>& z_ohm) {
-    Circuit circuit = shunt_circuit(bus, z_ohm);
-    circuit.neutral_earthed[0] = ref.kind == ElementKind::synchronous_machine && z_ohm[kZero];
-    add_block(ref, circuit);
+    add_block(ref, [&](Part part) {
+      BySequence<std::optional<Complex>> z = z_ohm;
+      for (auto& one : z)
+        if (one) one = part_of(*one, part);
+      Circuit circuit = shunt_circuit(bus, z);
+      circuit.neutral_earthed[0] = ref.kind == ElementKind::synchronous_machine && z_ohm[kZero];
+      return circuit;
+    });
     positive_->mark(model_.node_of_bus[at(bus)]);
   };
   for (std::uint32_t i = 0; i < network_.network_feeders.size(); ++i) {
@@ -189,15 +220,20 @@ void Builder::add_lines() {
   for (std::uint32_t i = 0; i < network_.lines.size(); ++i) {
     const Line& line = network_.lines[i];
     if (!is_live(network_, line, line.from, line.to)) continue;
-    Circuit circuit = series_circuit(line.from, line.to, line_impedance_ohm(line));
-    if (in_group[i]) circuit.y_siemens[kZero] = {};
+    const auto z = line_impedance_ohm(line);
     const auto charging = line_charging_siemens(line);
-    for (int s = 0; s < 3; ++s) {
-      if (s != kZero && !options_.include_shunts) continue;
-      for (int end = 0; end < 2; ++end) circuit.y_siemens[s][end][end] += charging[s] / 2.0;
-      circuit.earthed[s] = charging[s] != Complex(0);
-    }
-    add_block({ElementKind::line, i}, circuit);
+    add_block({ElementKind::line, i}, [&](Part part) {
+      Circuit circuit =
+          series_circuit(line.from, line.to, {part_of(z[0], part), part_of(z[1], part), part_of(z[2], part)});
+      if (in_group[i]) circuit.y_siemens[kZero] = {};
+      for (int s = 0; s < 3; ++s) {
+        if (charging[s] == Complex(0) || (s != kZero && !options_.include_shunts)) continue;
+        const Complex half = 0.5 / part_of_shunt(1.0 / charging[s], part);
+        for (int end = 0; end < 2; ++end) circuit.y_siemens[s][end][end] += half;
+        circuit.earthed[s] = true;
+      }
+      return circuit;
+    });
     links_.push_back(
         {model_.node_of_bus[at(line.from)], model_.node_of_bus[at(line.to)], 0, {ElementKind::line, i}});
   }
@@ -228,12 +264,7 @@ void Builder::add_coupled_group(const std::vector<std::uint32_t>& members,
   }
   const Eigen::MatrixXcd y = z.inverse();
 
-  struct End {
-    Eigen::Index line;
-    BusIndex bus;
-    double sign;
-  };
-  std::vector<End> ends;
+  std::vector<CoupledEnd> ends;
   Block block{static_cast<std::uint32_t>(model_.block_terminals.size()), 0,
               static_cast<std::uint32_t>(model_.block_y.size())};
   for (Eigen::Index k = 0; k < m; ++k) {
@@ -250,11 +281,16 @@ void Builder::add_coupled_group(const std::vector<std::uint32_t>& members,
     model_.block_terminals.push_back(static_cast<std::uint32_t>(own) + 1);
   }
   block.count = static_cast<std::uint32_t>(ends.size());
-  for (const End& a : ends) {
-    for (const End& b : ends) {
-      const double scale = model_.nominal_kv[at(a.bus)] * model_.nominal_kv[at(b.bus)] / model_.base_mva;
-      model_.block_y.push_back({a.sign * b.sign * y(a.line, b.line) * scale, 0, 0});
-    }
+  add_coupled_y(y, ends, Part::whole);
+  if (options_.separate_parts) {
+    Eigen::MatrixXcd x = z, resistance = z;
+    for (Eigen::Index i = 0; i < m; ++i)
+      for (Eigen::Index j = 0; j < m; ++j) {
+        x(i, j) = Complex(0, z(i, j).imag());
+        resistance(i, j) = i == j ? part_of(z(i, j), Part::resistance) : z(i, j).real();
+      }
+    add_coupled_y(x.inverse(), ends, Part::reactance);
+    add_coupled_y(resistance.inverse(), ends, Part::resistance);
   }
   for (Eigen::Index k = 0; k < m; ++k) {
     const Line& line = network_.lines[members[k]];
@@ -272,6 +308,24 @@ void Builder::add_coupled_group(const std::vector<std::uint32_t>& members,
   model_.blocks.push_back(block);
 }
 
+// Part::whole adds the block's entries, the others fill theirs in.
+void Builder::add_coupled_y(const Eigen::MatrixXcd& y, const std::vector<CoupledEnd>& ends, Part part) {
+  const std::size_t count = ends.size() * ends.size();
+  if (part == Part::reactance) model_.block_parts.resize(model_.block_parts.size() + count);
+  std::size_t place = model_.block_parts.size() - (part == Part::whole ? 0 : count);
+  for (const CoupledEnd& a : ends)
+    for (const CoupledEnd& b : ends) {
+      const double scale = model_.nominal_kv[at(a.bus)] * model_.nominal_kv[at(b.bus)] / model_.base_mva;
+      const Complex entry = a.sign * b.sign * y(a.line, b.line) * scale;
+      if (part == Part::whole)
+        model_.block_y.push_back({entry, 0, 0});
+      else if (part == Part::reactance)
+        model_.block_parts[place++].x0 = -entry.imag();
+      else
+        model_.block_parts[place++].r0 = entry.real();
+    }
+}
+
 void Builder::add_transformers() {
   const auto link = [&](BusIndex hv, BusIndex lower, int clock, ElementRef ref) {
     links_.push_back(
@@ -281,7 +335,7 @@ void Builder::add_transformers() {
     const Transformer& t = network_.transformers[i];
     if (!is_live(network_, t, t.hv_bus, t.lv_bus)) continue;
     const ElementRef ref{ElementKind::transformer, i};
-    add_block(ref, transformer_circuit(t));
+    add_block(ref, [&](Part part) { return transformer_circuit(t, part); });
     link(t.hv_bus, t.lv_bus, t.vector_group.lower[0].clock, ref);
   }
   for (std::uint32_t i = 0; i < network_.three_winding_transformers.size(); ++i) {
@@ -291,7 +345,7 @@ void Builder::add_transformers() {
     ThreeWindingTransformer t = given;
     if (lv_dead) t.lv_bus.reset();
     const ElementRef ref{ElementKind::three_winding_transformer, i};
-    add_block(ref, three_winding_circuit(t));
+    add_block(ref, [&](Part part) { return three_winding_circuit(t, part); });
     link(t.hv_bus, t.mv_bus, t.vector_group.lower[0].clock, ref);
     if (t.lv_bus) link(t.hv_bus, *t.lv_bus, t.vector_group.lower[1].clock, ref);
   }
@@ -302,27 +356,32 @@ void Builder::add_rest() {
     const EarthingTransformer& e = network_.earthing_transformers[i];
     const auto neutral = triple_neutral_ohm(e.neutral);
     if (!is_live(network_, e, e.bus) || !neutral) continue;
-    Circuit circuit =
-        shunt_circuit(e.bus, {Complex(e.r0_ohm, e.x0_ohm) + *neutral, std::nullopt, std::nullopt});
-    circuit.neutral_earthed[0] = true;
-    add_block({ElementKind::earthing_transformer, i}, circuit);
+    add_block({ElementKind::earthing_transformer, i}, [&](Part part) {
+      const Complex z = part_of(Complex(e.r0_ohm, e.x0_ohm) + *neutral, part);
+      Circuit circuit = shunt_circuit(e.bus, {z, std::nullopt, std::nullopt});
+      circuit.neutral_earthed[0] = true;
+      return circuit;
+    });
   }
   for (std::uint32_t i = 0; i < network_.series_reactors.size(); ++i) {
     const SeriesReactor& r = network_.series_reactors[i];
     if (!is_live(network_, r, r.from, r.to)) continue;
     const ElementRef ref{ElementKind::series_reactor, i};
-    const Complex z = reactor_impedance_ohm(r);
-    add_block(ref, series_circuit(r.from, r.to, {z, z, z}));
+    add_block(ref, [&](Part part) {
+      const Complex z = part_of(reactor_impedance_ohm(r), part);
+      return series_circuit(r.from, r.to, {z, z, z});
+    });
     links_.push_back({model_.node_of_bus[at(r.from)], model_.node_of_bus[at(r.to)], 0, ref});
   }
   for (std::uint32_t i = 0; i < network_.shunts.size(); ++i) {
     const Shunt& shunt = network_.shunts[i];
     const bool grounded = shunt.grounded.value_or(false);
     if (!is_live(network_, shunt, shunt.bus) || (!grounded && !options_.include_shunts)) continue;
-    const Complex z(0, -shunt.rated_kv * shunt.rated_kv / shunt.mvar);
-    const std::optional<Complex> series = options_.include_shunts ? std::optional(z) : std::nullopt;
-    add_block({ElementKind::shunt, i},
-              shunt_circuit(shunt.bus, {grounded ? std::optional(z) : std::nullopt, series, series}));
+    add_block({ElementKind::shunt, i}, [&](Part part) {
+      const Complex z = part_of_shunt({0, -shunt.rated_kv * shunt.rated_kv / shunt.mvar}, part);
+      const std::optional<Complex> series = options_.include_shunts ? std::optional(z) : std::nullopt;
+      return shunt_circuit(shunt.bus, {grounded ? std::optional(z) : std::nullopt, series, series});
+    });
   }
 }
 

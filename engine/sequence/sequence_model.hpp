@@ -60,6 +60,15 @@ struct SequenceOptions {
   /// Keep line charging and shunt banks in positive and negative sequence too. Without it they count in zero
   /// sequence only, as IEC 60909-0 assumes (5.2, from memory).
   bool include_shunts = false;
+  /// Also make block_parts: the networks of reactances and of resistances.
+  bool separate_parts = false;
+};
+
+/// Admittances [pu] of the networks that hold the reactances, or the resistances, of every element alone.
+/// Negative sequence is taken as positive, as the standards that use them do.
+struct SeparateParts {
+  double x1 = 0, x0 = 0;  ///< of 1 / X
+  double r1 = 0, r0 = 0;  ///< of 1 / R
 };
 
 /// Data that contradict each other in the state under study; the findings say where.
@@ -92,6 +101,7 @@ struct SequenceModel {
   std::vector<Block> blocks;
   std::vector<std::uint32_t> block_terminals;  ///< indices into terminals
   std::vector<BySequence<Complex>> block_y;    ///< per unit
+  std::vector<SeparateParts> block_parts;      ///< beside block_y when the options ask for them
 
   std::vector<InducedLine> induced_lines;
 

@@ -97,18 +97,19 @@ struct ZeroSide {
 };
 
 // Zero sequence with a zigzag on at least one side: each side for itself.
-void write_zigzag(const Transformer& t, const std::array<ZeroSide, 2>& sides, const Star& base,
+void write_zigzag(const Transformer& t, const std::array<ZeroSide, 2>& sides, const Star& base, Part part,
                   Circuit& circuit) {
   circuit.group[kZero] = {-1, -1, -1};
   for (int i = 0; i < 2; ++i) {
     if (!sides[i].entry) continue;
     Complex z = *sides[i].entry;
     if (is_zigzag(sides[i].winding)) {
-      z += (zero_short_circuit_pu(t));
+      z += zero_short_circuit_pu(t);
     } else {
       if (!t.zm0_percent) continue;
-      z += (short_circuit_pu(t) / 2.0 + Complex(0, *t.zm0_percent / 100));
+      z += short_circuit_pu(t) / 2.0 + Complex(0, *t.zm0_percent / 100);
     }
+    z = part_of(z, part);
     const double kv = base.winding_kv[i];
     circuit.y_siemens[kZero][i][i] = base.mva / (kv * kv) / z;
     circuit.group[kZero][i] = i;
@@ -118,7 +119,7 @@ void write_zigzag(const Transformer& t, const std::array<ZeroSide, 2>& sides, co
 
 }  // namespace
 
-Circuit transformer_circuit(const Transformer& t) {
+Circuit transformer_circuit(const Transformer& t, Part part) {
   Circuit circuit;
   circuit.terminals = 2;
   circuit.bus = {t.hv_bus, t.lv_bus, {}};
@@ -126,7 +127,7 @@ Circuit transformer_circuit(const Transformer& t) {
   Star star;
   star.mva = t.rated_mva;
   star.winding_kv = {tapped(t.hv_kv, t.tap, Side::hv), tapped(t.lv_kv, t.tap, Side::lv), 1};
-  const Complex half = (short_circuit_pu(t)) / 2.0;
+  const Complex half = part_of(short_circuit_pu(t), part) / 2.0;
   star.arms = {{half, 0}, {half, 1}};
   write_star(star, kPositive, circuit);
   write_star(star, kNegative, circuit);
@@ -136,18 +137,18 @@ Circuit transformer_circuit(const Transformer& t) {
       ZeroSide{lower.winding, entry_pu(lower.winding, t.lv_neutral, t.rated_mva, star.winding_kv[1])}};
   for (int i = 0; i < 2; ++i) circuit.neutral_earthed[i] = sides[i].entry.has_value();
   if (is_zigzag(sides[0].winding) || is_zigzag(sides[1].winding)) {
-    write_zigzag(t, sides, star, circuit);
+    write_zigzag(t, sides, star, part, circuit);
     return circuit;
   }
   star.winding_kv[1] *= zero_sequence_sign(lower);
   circuit.open_kv = star.winding_kv;
   star.arms.clear();
-  const Complex half0 = (zero_short_circuit_pu(t)) / 2.0;
+  const Complex half0 = zero_short_circuit_pu(t) / 2.0;
   for (int i = 0; i < 2; ++i) {
-    if (sides[i].winding == Winding::delta) star.arms.push_back({half0, -1});
-    if (sides[i].entry) star.arms.push_back({half0 + *sides[i].entry, i});
+    if (sides[i].winding == Winding::delta) star.arms.push_back({part_of(half0, part), -1});
+    if (sides[i].entry) star.arms.push_back({part_of(half0 + *sides[i].entry, part), i});
   }
-  if (t.zm0_percent) star.arms.push_back({(Complex(0, *t.zm0_percent / 100)), -1});
+  if (t.zm0_percent) star.arms.push_back({part_of_shunt(Complex(0, *t.zm0_percent / 100), part), -1});
   write_star(star, kZero, circuit);
   return circuit;
 }
@@ -166,8 +167,9 @@ std::array<Complex, 3> star_arms(const ThreeWindingTransformer& t, bool zero) {
 // Common neutral of an autotransformer: with e = (1, 1, 0) over hv, mv, lv and y_n = 1 / (3 Zn),
 // Y' = Y - (Y e)(Y e)^T / (y_n + e^T Y e), in siemens. An open neutral leaves a pure series path between hv
 // and mv.
-void apply_common_neutral(const ThreeWindingTransformer& t, Circuit& circuit) {
-  const auto triple = triple_neutral_ohm(t.hv_neutral);
+void apply_common_neutral(const ThreeWindingTransformer& t, Part part, Circuit& circuit) {
+  auto triple = triple_neutral_ohm(t.hv_neutral);
+  if (triple && *triple != Complex(0)) triple = part_of(*triple, part);
   if (triple && *triple == Complex(0)) return;
   auto& y = circuit.y_siemens[kZero];
   const bool through = circuit.earthed[kZero];
@@ -192,7 +194,7 @@ void apply_common_neutral(const ThreeWindingTransformer& t, Circuit& circuit) {
 
 }  // namespace
 
-Circuit three_winding_circuit(const ThreeWindingTransformer& t) {
+Circuit three_winding_circuit(const ThreeWindingTransformer& t, Part part) {
   Circuit circuit;
   circuit.terminals = t.lv_bus ? 3 : 2;
   circuit.bus = {t.hv_bus, t.mv_bus, t.lv_bus.value_or(BusIndex{})};
@@ -201,7 +203,7 @@ Circuit three_winding_circuit(const ThreeWindingTransformer& t) {
   star.winding_kv = {tapped(t.hv_kv, t.tap, Side::hv), tapped(t.mv_kv, t.tap, Side::mv),
                      tapped(t.lv_kv, t.tap, Side::lv)};
   const auto z = star_arms(t, false);
-  for (int i = 0; i < circuit.terminals; ++i) star.arms.push_back({z[i], i});
+  for (int i = 0; i < circuit.terminals; ++i) star.arms.push_back({part_of(z[i], part), i});
   write_star(star, kPositive, circuit);
   write_star(star, kNegative, circuit);
 
@@ -221,14 +223,14 @@ Circuit three_winding_circuit(const ThreeWindingTransformer& t) {
     circuit.neutral_earthed[i] =
         shares_neutral ? triple_neutral_ohm(t.hv_neutral).has_value() : entry.has_value();
     if (winding[i] == Winding::delta)
-      star.arms.push_back({z0[i], -1});
+      star.arms.push_back({part_of(z0[i], part), -1});
     else if (entry && i < circuit.terminals)
-      star.arms.push_back({z0[i] + *entry, i});
+      star.arms.push_back({part_of(z0[i] + *entry, part), i});
   }
-  if (t.zm0_percent) star.arms.push_back({Complex(0, *t.zm0_percent / 100), -1});
+  if (t.zm0_percent) star.arms.push_back({part_of_shunt(Complex(0, *t.zm0_percent / 100), part), -1});
   write_star(star, kZero, circuit);
   circuit.neutral_shared = t.is_auto();
-  if (t.is_auto()) apply_common_neutral(t, circuit);
+  if (t.is_auto()) apply_common_neutral(t, part, circuit);
   return circuit;
 }
 
