@@ -1,3 +1,4 @@
+#include "engine/standard/ieee_c37/formulas.hpp"
 #include "reports/fault_report.hpp"
 #include "reports/number_text.hpp"
 #include "reports/study_words.hpp"
@@ -43,6 +44,8 @@ class CsvPiece : public ReportPiece {
     text += case_kind_name(studied.case_kind);
     if (studied.iec60909 != nullptr) {
       iec60909_columns(*studied.iec60909);
+    } else if (studied.c37 != nullptr) {
+      c37_columns(*studied.c37, r);
     } else {
       amount(r.current_ka);
       optional(r.x_over_r);
@@ -73,6 +76,36 @@ class CsvPiece : public ReportPiece {
     for (const auto& one : q.not_evaluated)
       missing += (missing.empty() ? "" : "; ") + one.quantity + ": " + one.why;
     text += csv_field(missing);
+  }
+  void c37_columns(const ieee_c37::Quantities& q, const FaultResult& r) {
+    for (const ieee_c37::NetworkCurrent* n : {&q.first_cycle, &q.interrupting}) {
+      amount(n->ez_ka);
+      amount(n->ex_ka);
+      optional(n->x_over_r);
+      optional(n->complex_x_over_r);
+      if (n == &q.interrupting) continue;
+      optional(q.asymmetric_ka);
+      amount(ieee_c37::kMomentaryRms * n->ez_ka);
+      optional(q.crest_ka);
+      amount(ieee_c37::kMomentaryCrest * n->ez_ka);
+    }
+    amount(q.nacd);
+    optional(q.delayed_ka);
+    const auto& xr = q.interrupting.x_over_r;
+    for (const double cycles : {2.0, 3.0, 5.0, 8.0}) {
+      const double parting = *ieee_c37::parting_cycles(cycles);
+      optional(xr ? std::optional(ieee_c37::remote_factor(*xr, parting)) : std::nullopt);
+      optional(xr ? std::optional(ieee_c37::remote_factor_total(*xr, parting)) : std::nullopt);
+    }
+    const auto& first = q.first_cycle.x_over_r;
+    const bool low_voltage = study_.network().bus(r.fault.bus).nominal_kv <= 1;
+    const auto factor = [&](double (*of)(double, double), double power_factor) {
+      optional(first && low_voltage ? std::optional(of(*first, ieee_c37::test_x_over_r(power_factor)))
+                                    : std::nullopt);
+    };
+    for (const double power_factor : {0.50, 0.30, 0.20, 0.15})
+      factor(ieee_c37::peak_based_factor, power_factor);
+    factor(ieee_c37::rms_based_factor, 0.20);
   }
   void contribution(const StudiedFault& studied, const Contribution& c) {
     const FaultResult& r = studied.result;
@@ -130,13 +163,22 @@ class CsvReport : public FaultReport {
 
   void begin() override {
     if (table_ == CsvTable::faults)
-      sink_(std::string("bus,nominal_kv,fault,case_kind,") +
-            (study_.iec60909() == nullptr
-                 ? "current_ka,x_over_r,peak_ka"
-                 : "c,ikss_ka,skss_mva,r_over_x,kappa,ip_ka,ib_ka,idc_ka,ib_asymmetric_ka,ik_ka,m,n,ith_ka,"
-                   "i2t_ka2s,converter_ka,motor_share_percent,not_evaluated") +
-            ",earth_current_ka,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_deg,i2_ka,i2_deg,"
-            "r1_ohm,x1_ohm,r2_ohm,x2_ohm,r0_ohm,x0_ohm\r\n");
+      sink_(
+          std::string("bus,nominal_kv,fault,case_kind,") +
+          (study_.c37() != nullptr
+               ? "first_cycle_ka,first_cycle_ex_ka,x_over_r,complex_x_over_r,asymmetric_ka,asymmetric_1_6_ka,"
+                 "crest_ka,crest_2_7_ka,interrupting_ka,interrupting_ex_ka,interrupting_x_over_r,"
+                 "interrupting_complex_x_over_r,nacd,delayed_ka,factor_2_cycle,factor_2_cycle_total,"
+                 "factor_3_cycle,factor_3_cycle_total,factor_5_cycle,factor_5_cycle_total,factor_8_cycle,"
+                 "factor_8_cycle_total,factor_mccb_10ka,factor_mccb_20ka,factor_mccb_above,factor_power_"
+                 "breaker,"
+                 "factor_fused"
+           : study_.iec60909() == nullptr
+               ? "current_ka,x_over_r,peak_ka"
+               : "c,ikss_ka,skss_mva,r_over_x,kappa,ip_ka,ib_ka,idc_ka,ib_asymmetric_ka,ik_ka,m,n,ith_ka,"
+                 "i2t_ka2s,converter_ka,motor_share_percent,not_evaluated") +
+          ",earth_current_ka,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_deg,i2_ka,i2_deg,"
+          "r1_ohm,x1_ohm,r2_ohm,x2_ohm,r0_ohm,x0_ohm\r\n");
     else
       sink_(
           "bus,fault,case_kind,element,at_bus,ia_ka,ia_deg,ib_ka,ib_deg,ic_ka,ic_deg,i0_ka,i0_deg,i1_ka,i1_"

@@ -34,7 +34,7 @@ std::string json_heading(const Studies& studies, const ReportFacts& facts) {
   const bool iec = o.method == Method::iec60909;
   std::string out =
       "{\n\"format\": \"kiloamp-results\", \"version\": 1, \"study\": " + json_text(facts.study) +
-      ", \"method\": \"" + (iec ? "iec60909" : "classical") +
+      ", \"method\": \"" + method_name(o.method) +
       "\",\n\"case\": {\"title\": " + (study.network().title ? json_text(*study.network().title) : "null") +
       ", \"file\": " + json_text(facts.file) + ", \"sha256\": " + json_text(facts.sha256) +
       "},\n\"scenario\": " + (study.scenario_id().empty() ? "null" : json_text(study.scenario_id())) +
@@ -65,6 +65,9 @@ std::string json_heading(const Studies& studies, const ReportFacts& facts) {
     }
     out += "]}";
   }
+  if (o.method == Method::c37)
+    out += std::string(",\n\"c37\": {\"small_motors\": \"") +
+           (o.c37.small_motors == ieee_c37::SmallMotors::combined ? "in" : "out") + "\"}";
   for (const Study* s : studies) {
     out +=
         std::string(",\n\"prefault") + (s == &study ? "" : "_min") + "\": " + json_text(prefault_words(*s));
@@ -75,19 +78,24 @@ std::string json_heading(const Studies& studies, const ReportFacts& facts) {
   append_pair(out, o.earth_ohm);
   out += "}";
   if (facts.peaks) out += ",\n\"peak\": " + json_text(peak_words(o));
-  out += ",\n\"defaults_used\": [";
+  return out + ",\n" + json_assumptions(study.network(), study.defaults_used(), warnings_of(studies));
+}
+
+std::string json_assumptions(const Network& network, const std::vector<DefaultUse>& defaults,
+                             const std::vector<std::string>& warnings) {
+  std::string out = "\"defaults_used\": [";
   const char* gap = "\n";
-  for (const DefaultUse& use : study.defaults_used()) {
+  for (const DefaultUse& use : defaults) {
     out += gap + std::string(" {\"field\": ") + json_text(use.field) +
            ", \"value\": " + json_text(use.value) + ", \"source\": " + json_text(use.source) +
            ", \"elements\": [";
     for (std::size_t i = 0; i < use.elements.size(); ++i)
-      out += (i > 0 ? ", " : "") + json_text(element(study.network(), use.elements[i]).id);
+      out += (i > 0 ? ", " : "") + json_text(element(network, use.elements[i]).id);
     out += "]}";
     gap = ",\n";
   }
   out += "],\n\"warnings\": ";
-  append_list(out, warnings_of(studies));
+  append_list(out, warnings);
   out += ",\n\"cautions\": ";
   append_list(out, cautions());
   out += ",\n";

@@ -12,6 +12,11 @@ namespace kiloamp {
 /// the study's own members.
 [[nodiscard]] std::string json_heading(const Studies& studies, const ReportFacts& facts);
 
+/// The same members from "defaults_used" to "cautions", for a study of its own kind; ends ready for the next
+/// member.
+[[nodiscard]] std::string json_assumptions(const Network& network, const std::vector<DefaultUse>& defaults,
+                                           const std::vector<std::string>& warnings);
+
 /// "corrections": what the method changed on which element, with the impedance that came out [r, x]; ends
 /// ready for the next member.
 [[nodiscard]] std::string json_corrections(const Studies& studies);

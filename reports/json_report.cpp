@@ -17,12 +17,14 @@ class JsonPiece : public ReportPiece {
     if (!text.empty()) text += ",\n";
     text += "{\"bus\": " + bus(r.fault.bus) + ", \"fault\": \"" + fault_name(r.fault.kind) +
             "\", \"case_kind\": \"" + case_kind_name(studied.case_kind) + "\", \"current_ka\": ";
+    const ieee_c37::Quantities* c37 = studied.c37;
     append_shortest(text, iec != nullptr ? iec->ikss_ka : r.current_ka);
     text += ", \"x_over_r\": ";
-    optional(r.x_over_r);
+    optional(c37 != nullptr ? c37->first_cycle.x_over_r : r.x_over_r);
     text += ", \"peak_ka\": ";
-    optional(iec != nullptr ? iec->ip_ka : r.peak_ka);
+    optional(iec != nullptr ? iec->ip_ka : c37 != nullptr ? c37->crest_ka : r.peak_ka);
     if (iec != nullptr) iec60909_members(*iec, studied.inside_unit);
+    if (c37 != nullptr) c37_members(*c37);
     text += ", \"prefault_kv\": ";
     append_shortest(text, r.prefault_kv);
     phasors(r.sequence_ka);
@@ -97,6 +99,25 @@ class JsonPiece : public ReportPiece {
       }
       text += ']';
     }
+    text += '}';
+  }
+  void c37_members(const ieee_c37::Quantities& q) {
+    const auto network = [&](const char* name, const ieee_c37::NetworkCurrent& n) {
+      text += std::string("\"") + name + "\": {\"ez_ka\": ";
+      append_shortest(text, n.ez_ka);
+      member("ex_ka", n.ex_ka);
+      member("x_over_r", n.x_over_r);
+      member("complex_x_over_r", n.complex_x_over_r);
+    };
+    text += ", \"c37\": {";
+    network("first_cycle", q.first_cycle);
+    member("asymmetric_ka", q.asymmetric_ka);
+    member("crest_ka", q.crest_ka);
+    text += "}, ";
+    network("interrupting", q.interrupting);
+    member("nacd", q.nacd);
+    text += '}';
+    member("delayed_ka", q.delayed_ka);
     text += '}';
   }
   std::string id(ElementRef ref) const { return json_text(element(study_.network(), ref).id); }

@@ -14,8 +14,19 @@ std::string number(double value) {
 }
 }  // namespace
 
+const char* method_name(Method method) {
+  static constexpr const char* kNames[] = {"classical", "iec60909", "c37"};
+  return kNames[static_cast<std::size_t>(method)];
+}
+
 std::string method_words(const StudyOptions& o) {
   if (o.method == Method::classical) return "classical method (voltage behind impedance, no load currents)";
+  if (o.method == Method::c37)
+    return std::string("ANSI/IEEE C37.010, C37.13 and IEEE 551 (E/Z in three networks, ") +
+           (o.c37.small_motors == ieee_c37::SmallMotors::combined
+                ? "combined first-cycle network"
+                : "motors below 50 hp out of the first cycle") +
+           "; from memory of the standards' formulas)";
   return std::string("IEC 60909-0:") + (o.iec60909.edition == iec60909::Edition::e2016 ? "2016" : "2001") +
          " (equivalent voltage source, from memory of the standard's formulas)";
 }
@@ -40,6 +51,10 @@ std::string peak_words(const StudyOptions& o) {
   if (o.method == Method::classical)
     return "kappa sqrt(2) I with kappa = 1.02 + 0.98 exp(-3 R/X) (IEC 60909-0, 8.1), R/X of the loop "
            "impedance of the fault";
+  if (o.method == Method::c37)
+    return "crest = sqrt(2) (1 + exp(-2 pi t R/X)) E/Z, t = 0.49 - 0.1 exp(-X/3R) cycles (IEEE 551), X/R of "
+           "the "
+           "separate X and R networks";
   switch (o.iec60909.kappa) {
     case iec60909::KappaMethod::a:
       return "ip = kappa sqrt(2) I\"k, kappa by method (a): smallest R/X of the branches at the voltage "

@@ -9,6 +9,8 @@ namespace kiloamp {
 /// One study, or the same case once for the largest and once for the smallest currents; never empty.
 using Studies = std::vector<const Study*>;
 
+/// "classical", "iec60909", "c37".
+[[nodiscard]] const char* method_name(Method method);
 [[nodiscard]] std::string method_words(const StudyOptions& options);
 /// "max" or "min".
 [[nodiscard]] const char* case_kind_name(CaseKind kind);

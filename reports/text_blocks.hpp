@@ -11,6 +11,9 @@ namespace kiloamp {
 /// Case, state, prefault voltage, fault impedance, peak formula where there are peaks, defaults, warnings.
 [[nodiscard]] std::string heading_block(const Studies& studies, const ReportFacts& facts);
 [[nodiscard]] std::string defaults_block(const Network& network, const std::vector<DefaultUse>& defaults);
+/// `remarks`: how many values `check` would remark on.
+[[nodiscard]] std::string warnings_block(const std::vector<std::string>& warnings, std::size_t remarks,
+                                         const std::string& file);
 [[nodiscard]] std::string cautions_block();
 
 }  // namespace kiloamp

@@ -56,13 +56,22 @@ class TextPiece : public ReportPiece {
       for (const auto& value : {q.ip_ka, q.ib_ka, q.ik_ka, q.ith_ka, q.r_over_x, q.kappa})
         cells.push_back(or_dash(value));
       for (const auto& one : q.not_evaluated) ++not_evaluated[one.quantity + ": " + one.why];
+    } else if (studied.c37 != nullptr) {
+      const ieee_c37::Quantities& q = *studied.c37;
+      cells.push_back(readable(q.first_cycle.ez_ka));
+      for (const auto& value : {q.first_cycle.x_over_r, q.asymmetric_ka, q.crest_ka})
+        cells.push_back(or_dash(value));
+      cells.push_back(readable(q.interrupting.ez_ka));
+      cells.push_back(or_dash(q.interrupting.x_over_r));
+      cells.push_back(r.has_source ? fixed(q.nacd, 2) : "-");
+      cells.push_back(or_dash(q.delayed_ka));
     } else {
       cells.push_back(readable(r.current_ka));
       cells.push_back(r.current_ka == 0 ? "-" : or_dash(r.x_over_r));
       cells.push_back(or_dash(r.peak_ka));
     }
     cells.push_back(readable(std::abs(r.earth_current_ka)));
-    if (studied.iec60909 == nullptr)
+    if (studied.iec60909 == nullptr && studied.c37 == nullptr)
       for (const auto& z : {r.z1_ohm, r.z0_ohm}) {
         cells.push_back(z ? readable(z->real()) : "-");
         cells.push_back(z ? readable(z->imag()) : "-");
@@ -195,6 +204,18 @@ class TextReport : public FaultReport {
       table_.column("earth", "kA", Align::decimal);
       return;
     }
+    if (study_.c37() != nullptr) {
+      table_.column("1st cycle", "kA", Align::decimal);
+      table_.column("X/R", "", Align::decimal);
+      table_.column("total rms", "kA", Align::decimal);
+      table_.column("crest", "kA", Align::decimal);
+      table_.column("interrupting", "kA", Align::decimal);
+      table_.column("X/R", "", Align::decimal);
+      table_.column("NACD", "", Align::decimal);
+      table_.column("30 cycles", "kA", Align::decimal);
+      table_.column("earth", "kA", Align::decimal);
+      return;
+    }
     table_.column("current", "kA", Align::decimal);
     table_.column("X/R", "", Align::decimal);
     table_.column("peak", "kA", Align::decimal);
@@ -218,7 +239,16 @@ class TextReport : public FaultReport {
 
   void end(const CrossCheck* check) override {
     sink_(table_.text());
-    if (study_.iec60909() == nullptr)
+    if (study_.c37() != nullptr)
+      sink_(
+          "\n" +
+          paragraph("",
+                    "1st cycle, interrupting, 30 cycles: E/Z, symmetrical rms, largest phase. X/R: separate "
+                    "networks of X and of R. total rms: at half a cycle. NACD: remote share of the "
+                    "interrupting current, 1 = no ac decay. earth: 3 I0, first cycle. CSV and JSON add "
+                    "E/X, complex X/R, 1.6 and 2.7 times, and the factors of breakers and fuses. - : no "
+                    "value."));
+    else if (study_.iec60909() == nullptr)
       sink_(
           "\ncurrent: largest phase current, rms. earth: 3 I0. R1, X1, R0, X0: Thevenin impedances; - : no "
           "path, or no value.\n");
@@ -298,6 +328,20 @@ std::string defaults_block(const Network& network, const std::vector<DefaultUse>
   return out;
 }
 
+std::string warnings_block(const std::vector<std::string>& warnings, std::size_t remarks,
+                           const std::string& file) {
+  std::string out;
+  const char* label = "warnings     ";
+  for (const std::string& warning : warnings) {
+    out += paragraph(label, warning);
+    label = "             ";
+  }
+  if (remarks > 0)
+    out += paragraph(label, std::to_string(remarks) + (remarks == 1 ? " value is" : " values are") +
+                                " outside the usual range: kiloamp check " + file);
+  return out;
+}
+
 std::string heading_block(const Studies& studies, const ReportFacts& facts) {
   const Study& study = *studies.front();
   const StudyOptions& options = study.options();
@@ -341,16 +385,7 @@ std::string heading_block(const Studies& studies, const ReportFacts& facts) {
                            std::to_string(evaluation->motor_rules().size()) + " places (JSON lists them)");
   }
   out += defaults_block(n, study.defaults_used());
-  label = "warnings     ";
-  for (const std::string& warning : warnings_of(studies)) {
-    out += paragraph(label, warning);
-    label = "             ";
-  }
-  if (facts.remarks > 0)
-    out +=
-        paragraph(label, std::to_string(facts.remarks) + (facts.remarks == 1 ? " value is" : " values are") +
-                             " outside the usual range: kiloamp check " + facts.file);
-  return out;
+  return out + warnings_block(warnings_of(studies), facts.remarks, facts.file);
 }
 
 std::string cautions_block() {

@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <chrono>
+#include <cmath>
 
 namespace kiloamp {
 
@@ -27,6 +28,11 @@ std::string counted(std::size_t count, const char* one, const char* many) {
   return std::to_string(count) + " " + (count == 1 ? one : many);
 }
 
+std::string one_decimal(double value) {
+  std::string text = std::to_string(std::round(value * 10) / 10);
+  return text.substr(0, text.find('.') + 2);
+}
+
 template <typename Section>
 std::size_t live_count(const Section& section) {
   return static_cast<std::size_t>(
@@ -38,7 +44,7 @@ void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<s
   const auto converters = static_cast<std::size_t>(
       std::count_if(n.inverter_sources.begin(), n.inverter_sources.end(),
                     [](const auto& source) { return source.is_in_service() && !source.doubly_fed; }));
-  if (converters > 0 && options.method == Method::classical)
+  if (converters > 0 && options.method != Method::iec60909)
     warnings.push_back(counted(converters, "inverter source", "inverter sources") +
                        " left out: a voltage behind an impedance does not describe them");
   const auto drives = static_cast<std::size_t>(
@@ -54,23 +60,24 @@ void warn_of_unused(const Network& n, const StudyOptions& options, std::vector<s
     warnings.push_back(
         counted(n.induction_motors.size(), "induction motor entry", "induction motor entries") +
         " left out: smallest currents are wanted");
-  if (const auto count = live_count(n.power_station_units); count > 0 && options.method == Method::classical)
-    warnings.push_back(
-        counted(count, "power station unit", "power station units") +
-        " taken as separate machine and transformer: the classical method has no common correction");
+  if (const auto count = live_count(n.power_station_units); count > 0 && options.method != Method::iec60909)
+    warnings.push_back(counted(count, "power station unit", "power station units") +
+                       " taken as separate machine and transformer: this method has no common correction");
   const auto decaying = static_cast<std::size_t>(std::count_if(
       n.synchronous_machines.begin(), n.synchronous_machines.end(), [](const SynchronousMachine& m) {
         return m.is_in_service() &&
                (m.xd_transient_percent || m.td_subtransient_s || m.td_transient_s || m.ta_s);
       }));
   if (decaying > 0)
-    warnings.push_back("transient and synchronous reactances, rotor and time constants of " +
-                       counted(decaying, "machine", "machines") +
-                       " not used: this study follows no decay in time");
-  const auto devices = live_count(n.breakers) + live_count(n.fuses);
-  if (devices > 0)
-    warnings.push_back(counted(devices, "breaker or fuse", "breakers and fuses") +
-                       " not judged: this study computes currents, not duties");
+    warnings.push_back(
+        (options.method == Method::c37 ? "synchronous reactances and time constants of "
+                                       : "transient and synchronous reactances, rotor and time "
+                                         "constants of ") +
+        counted(decaying, "machine", "machines") + " not used: this study follows no decay in time");
+  const auto devices = live_count(n.breakers) + live_count(n.fuses) + live_count(n.switchboards);
+  if (devices > 0 && !options.judges_devices)
+    warnings.push_back(counted(devices, "breaker, fuse or switchboard", "breakers, fuses and switchboards") +
+                       " not judged: this study computes currents; kiloamp duty judges devices");
   if (const auto count = live_count(n.relays))
     warnings.push_back(counted(count, "relay", "relays") + " not evaluated in this study");
   const auto shunts =
@@ -134,12 +141,18 @@ void Study::prepare() {
     apply_scenario(network_, *options_.scenario);
     scenario_id_ = network_.scenarios[*options_.scenario].id;
   }
-  const bool iec = options_.method == Method::iec60909;
+  const bool iec = options_.method == Method::iec60909, c37 = options_.method == Method::c37;
   if (iec && !network_.power_station_units.empty() && !options_.inside_unit) as_given_ = network_;
   defaults_ = fill_defaults(network_);
   apply_case_kind(network_, options_.case_kind);
   if (iec) correct();
-  model_ = build_sequence_model(network_, {options_.include_shunts});
+  std::optional<Network> without_factors;
+  if (c37) {
+    const auto reactances = first_cycle_reactances();
+    without_factors = network_;
+    ieee_c37::apply(reactances, network_);
+  }
+  model_ = build_sequence_model(network_, {options_.include_shunts, c37});
   wanted_ = options_.buses;
   for (std::size_t b = 0; b < network_.buses.size() && options_.buses.empty(); ++b)
     if (network_.buses[b].is_in_service()) wanted_.push_back(static_cast<BusIndex>(b));
@@ -148,6 +161,10 @@ void Study::prepare() {
   if (iec)
     evaluation_ = std::make_unique<iec60909::Evaluation>(network_, *solver_, options_.iec60909,
                                                          options_.case_kind, options_.threads);
+  if (c37)
+    c37_ = std::make_unique<ieee_c37::Evaluation>(*without_factors, *solver_, prefault_of(network_, options_),
+                                                  SequenceOptions{options_.include_shunts}, options_.c37,
+                                                  options_.threads);
   using Milliseconds = std::chrono::duration<double, std::milli>;
   timing_ = {Milliseconds(modelled - start).count(),
              Milliseconds(std::chrono::steady_clock::now() - modelled).count()};
@@ -155,6 +172,10 @@ void Study::prepare() {
   warn_of_unused(network_, options_, warnings_);
   if (evaluation_)
     warnings_.insert(warnings_.end(), evaluation_->notes().begin(), evaluation_->notes().end());
+  if (c37_) {
+    warnings_.insert(warnings_.end(), c37_->notes().begin(), c37_->notes().end());
+    warn_of_x_over_r();
+  }
   for (const DefaultUse& use : defaults_)
     if (use.field == "r0_ohm_per_km, x0_ohm_per_km")
       warnings_.push_back("earth-fault currents rest on assumed zero-sequence data of " +
@@ -179,6 +200,40 @@ void Study::correct() {
     if (network_.buses[b].nominal_kv <= 1 && !network_.buses[b].voltage_tolerance_percent)
       tolerance.elements.push_back({ElementKind::bus, b});
   if (!tolerance.elements.empty()) defaults_.push_back(std::move(tolerance));
+}
+
+std::vector<ieee_c37::MachineReactance> Study::first_cycle_reactances() const {
+  std::vector<Finding> missing;
+  auto reactances = ieee_c37::machine_reactances(network_, ieee_c37::DutyNetwork::first_cycle,
+                                                 options_.c37.small_motors, missing);
+  if (!missing.empty()) throw NetworkError(std::move(missing));
+  return reactances;
+}
+
+void Study::warn_of_x_over_r() {
+  std::size_t count = 0;
+  double most = 0;
+  std::string worst;
+  for (const BusIndex bus : wanted_) {
+    const auto z = solver_->thevenin_pu(bus);
+    const auto parts = c37_->separate(ieee_c37::DutyNetwork::first_cycle).at_bus(bus);
+    if (!z || !parts || !(z->z1.real() > 0) || !(z->z1.imag() > 0)) continue;
+    const ieee_c37::NetworkCurrent ratios{0, 0, parts->x_over_r(FaultKind::three_phase),
+                                          z->z1.imag() / z->z1.real()};
+    if (!ieee_c37::x_over_r_differ(ratios)) continue;
+    ++count;
+    const double times = *ratios.x_over_r / *ratios.complex_x_over_r;
+    if (std::max(times, 1 / times) <= most) continue;
+    most = std::max(times, 1 / times);
+    worst = network_.bus(bus).id + ": " + one_decimal(*ratios.x_over_r) + " against " +
+            one_decimal(*ratios.complex_x_over_r);
+  }
+  if (count > 0)
+    warnings_.push_back(
+        "at " + counted(count, "bus", "buses") +
+        " X/R of the separate X and R networks, which the standards ask for, differs by more than a "
+        "tenth from that of the complex impedance (most at " +
+        worst + "): in a mesh the two reductions are not the same network");
 }
 
 void Study::find_insides() {
@@ -217,9 +272,12 @@ void FaultLoop::at_bus(BusIndex bus, const FaultVisit& visit) {
     const bool inside = options.inside_unit.has_value();
     if (const auto* evaluation = study_->iec60909()) {
       const iec60909::Quantities quantities = evaluation->of(result_);
-      visit({result_, options.case_kind, &quantities, inside});
+      visit({study_, result_, options.case_kind, &quantities, nullptr, inside});
+    } else if (const auto* c37 = study_->c37()) {
+      const ieee_c37::Quantities quantities = c37->of(result_);
+      visit({study_, result_, options.case_kind, nullptr, &quantities, inside});
     } else {
-      visit({result_, options.case_kind, nullptr, inside});
+      visit({study_, result_, options.case_kind, nullptr, nullptr, inside});
     }
   }
 }

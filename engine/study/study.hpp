@@ -7,6 +7,7 @@
 #include "engine/fault/fault_solver.hpp"
 #include "engine/network/finding.hpp"
 #include "engine/standard/iec60909/quantities.hpp"
+#include "engine/standard/ieee_c37/quantities.hpp"
 
 namespace kiloamp {
 
@@ -20,16 +21,19 @@ struct PrefaultValue {
 using PrefaultChoice = std::variant<PrefaultAsGiven, PrefaultFlat, PrefaultValue>;
 
 /// Classical: voltage behind impedance, the case's impedances as they are. IEC 60909: equivalent voltage
-/// source c Un / sqrt(3) at the fault, corrected impedances.
-enum class Method : std::uint8_t { classical, iec60909 };
+/// source c Un / sqrt(3) at the fault, corrected impedances. C37: ANSI/IEEE, prefault voltage behind the
+/// first-cycle reactances of machines, with the interrupting and the delayed network beside it.
+enum class Method : std::uint8_t { classical, iec60909, c37 };
 
 struct StudyOptions {
   Method method = Method::classical;
   iec60909::Options iec60909;
+  ieee_c37::Options c37;
   CaseKind case_kind = CaseKind::max;
   std::optional<std::size_t> scenario;  ///< index in Network::scenarios
   PrefaultChoice prefault = PrefaultAsGiven{};
   bool include_shunts = false;
+  bool judges_devices = false;  ///< the study's user does: no warning that devices are not judged
   std::vector<FaultKind> kinds{kAllFaults.begin(), kAllFaults.end()};
   std::vector<BusIndex> buses;  ///< empty: all buses in service
   /// IEC 60909: the power station unit between whose machine and transformer the faults lie.
@@ -40,11 +44,14 @@ struct StudyOptions {
   int threads = 1;
 };
 
+class Study;
 /// A fault as the study's method sees it.
 struct StudiedFault {
+  const Study* study;  ///< that solved it
   const FaultResult& result;
   CaseKind case_kind = CaseKind::max;
   const iec60909::Quantities* iec60909 = nullptr;  ///< of that method
+  const ieee_c37::Quantities* c37 = nullptr;       ///< of that method
   bool inside_unit = false;                        ///< solved with the factors for a fault inside a unit
   operator const FaultResult&() const { return result; }
 };
@@ -82,6 +89,8 @@ class Study {
   /// IEC 60909: what was corrected, and what follows from a fault; null for another method.
   [[nodiscard]] const std::vector<iec60909::Correction>& corrections() const { return corrections_; }
   [[nodiscard]] const iec60909::Evaluation* iec60909() const { return evaluation_.get(); }
+  /// C37: the networks beside the first-cycle one; null for another method.
+  [[nodiscard]] const ieee_c37::Evaluation* c37() const { return c37_.get(); }
   /// A study of its own for a bus between machine and transformer of a power station unit, whose faults need
   /// factors of their own; null for every other bus.
   [[nodiscard]] std::unique_ptr<Study> inside_unit(BusIndex bus) const;
@@ -94,6 +103,8 @@ class Study {
  private:
   void prepare();
   void correct();
+  [[nodiscard]] std::vector<ieee_c37::MachineReactance> first_cycle_reactances() const;
+  void warn_of_x_over_r();
   void find_insides();
 
   Network network_;
@@ -105,6 +116,7 @@ class Study {
   SequenceModel model_;
   std::unique_ptr<FaultSolver> solver_;
   std::unique_ptr<iec60909::Evaluation> evaluation_;
+  std::unique_ptr<ieee_c37::Evaluation> c37_;
   std::vector<std::pair<Node, std::uint32_t>> inside_;  ///< nodes inside units, sorted
   std::vector<std::string> warnings_;
   std::vector<BusIndex> wanted_;

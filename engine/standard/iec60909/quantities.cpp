@@ -1,6 +1,7 @@
 #include "engine/standard/iec60909/quantities.hpp"
 
 #include <algorithm>
+#include <cassert>
 #include <cmath>
 #include <future>
 #include <limits>
@@ -38,7 +39,12 @@ Evaluation::Evaluation(const Network& corrected, const FaultSolver& solver, cons
                        CaseKind kind, int threads)
     : network_(&corrected), solver_(&solver), options_(options), kind_(kind) {
   const SequenceModel& model = solver.model();
-  dc_ratio_ = dc_frequency_ratio(corrected.frequency_hz, options.tmin_s);
+  for (std::size_t i = 0; i <= options.parting_s.size(); ++i) {
+    const auto ratio =
+        dc_frequency_ratio(corrected.frequency_hz, i == 0 ? options.tmin_s : options.parting_s[i - 1]);
+    if (ratio && std::find(dc_ratios_.begin(), dc_ratios_.end(), *ratio) == dc_ratios_.end())
+      dc_ratios_.push_back(*ratio);
+  }
   build_companions(threads);
   collect_machines();
   std::vector<double> e_pu(model.node_count(), 1.0);
@@ -66,8 +72,28 @@ void Evaluation::build_companions(int threads) {
   std::vector<SequenceModel> models;
   models.push_back(at_peak.get());
   models.push_back(no_motors.get());
-  if (dc_ratio_) models.push_back(build_sequence_model(at_frequency(n, *dc_ratio_, false)));
-  companions_.emplace(*solver_, models, threads);
+  for (const double ratio : dc_ratios_) {
+    if (models.size() == CompanionNetworks::kMost) add_companions(models, threads);
+    models.push_back(build_sequence_model(at_frequency(n, ratio, false)));
+  }
+  add_companions(models, threads);
+}
+
+void Evaluation::add_companions(std::vector<SequenceModel>& models, int threads) {
+  if (!companions_)
+    companions_.emplace(*solver_, models, threads);
+  else
+    dc_companions_.emplace_back(*solver_, models, threads);
+  models.clear();
+}
+
+std::optional<Complex> Evaluation::dc_impedance_pu(double ratio, BusIndex bus) const {
+  const auto which =
+      static_cast<std::size_t>(std::find(dc_ratios_.begin(), dc_ratios_.end(), ratio) - dc_ratios_.begin());
+  assert(which < dc_ratios_.size());
+  if (which == 0) return companions_->impedance_pu(kAtDc, bus);
+  return dc_companions_[(which - 1) / CompanionNetworks::kMost].impedance_pu(
+      (which - 1) % CompanionNetworks::kMost, bus);
 }
 
 void Evaluation::collect_machines() {
@@ -237,54 +263,70 @@ void Evaluation::peak(const FaultResult& fault, Quantities& q) const {
   q.ip_ka = root2() * (*q.kappa * (q.ikss_ka - q.converter_ka) + q.converter_ka);
 }
 
-void Evaluation::breaking(const FaultResult& fault, Quantities& q) const {
+std::optional<double> Evaluation::breaking_ka(const FaultResult& fault, double t_s, AtTime& at_time) const {
   const BusIndex bus = fault.fault.bus;
+  const double converters = converter_ka(fault), initial = fault.current_ka + converters;
+  if (fault.fault.kind != FaultKind::three_phase) return initial;
   const SequenceModel& model = solver_->model();
-  if (fault.fault.kind != FaultKind::three_phase) {
-    q.ib_ka = q.ikss_ka;
-  } else {
-    const double e = solver_->prefault_pu(bus);
-    const Complex ik_pu = e / (*fault.z1_ohm / model.base_ohm(bus));
-    Complex ib_pu = ik_pu;
-    bool known = true;
-    for (const NearSources::Near& near : near_->at_node(model.node_of_bus[at(bus)])) {
-      const Machine& m = machines_[near.source];
-      const Complex part = m.y_pu * near.z_pu * ik_pu;
-      MachinePart row{m.element, std::abs(part) * model.base_ka(m.bus), std::abs(part) / m.rated_pu, 1, {}};
-      double decay = 0;  // what is left of the part at tmin
-      if (!m.drive) {
-        row.mu = mu(row.ratio, options_.tmin_s);
-        decay = row.mu;
-        if (m.motor && row.ratio > kFarRatio) {
-          if (!m.mw_per_pole_pair) {
-            known = false;
-            q.not_evaluated.push_back(
-                {"Ib", "pole_pairs or rated power of motor " + element(*network_, m.element).id});
-          } else {
-            row.q = iec60909::q(*m.mw_per_pole_pair, options_.tmin_s);
-            decay *= *row.q;
-          }
+  const double e = solver_->prefault_pu(bus);
+  const Complex ik_pu = e / (*fault.z1_ohm / model.base_ohm(bus));
+  Complex ib_pu = ik_pu;
+  bool known = true;
+  for (const NearSources::Near& near : near_->at_node(model.node_of_bus[at(bus)])) {
+    const Machine& m = machines_[near.source];
+    const Complex part = m.y_pu * near.z_pu * ik_pu;
+    MachinePart row{m.element, std::abs(part) * model.base_ka(m.bus), std::abs(part) / m.rated_pu, 1, {}};
+    double decay = 0;  // what is left of the part at that time
+    if (!m.drive) {
+      row.mu = mu(row.ratio, t_s);
+      decay = row.mu;
+      if (m.motor && row.ratio > kFarRatio) {
+        if (!m.mw_per_pole_pair) {
+          known = false;
+          at_time.not_evaluated.push_back(
+              {"Ib", "pole_pairs or rated power of motor " + element(*network_, m.element).id});
+        } else {
+          row.q = iec60909::q(*m.mw_per_pole_pair, t_s);
+          decay *= *row.q;
         }
       }
-      const Complex drop = Complex(0, (1.0 / m.y_pu).imag()) * part;
-      ib_pu -= drop / e * (1 - decay) * part;
-      q.machines.push_back(row);
     }
-    if (known)
-      q.ib_ka = std::min(std::abs(ib_pu) * model.base_ka(bus), q.ikss_ka - q.converter_ka) + q.converter_ka;
+    const Complex drop = Complex(0, (1.0 / m.y_pu).imag()) * part;
+    ib_pu -= drop / e * (1 - decay) * part;
+    at_time.machines.push_back(row);
   }
-  if (!dc_ratio_) {
-    q.not_evaluated.push_back({"i_dc", "tmin is beyond 12.5 cycles, where the standard gives no frequency"});
-    return;
+  if (!known) return std::nullopt;
+  return std::min(std::abs(ib_pu) * model.base_ka(bus), fault.current_ka) + converters;
+}
+
+AtTime Evaluation::at_time(const FaultResult& fault, double t_s) const {
+  AtTime result;
+  if (!fault.has_source || fault.current_ka == 0) {
+    result.ib_ka = result.idc_ka = 0;
+    return result;
   }
-  const auto z = companions_->impedance_pu(kAtDc, bus);
+  result.ib_ka = breaking_ka(fault, t_s, result);
+  const auto ratio = dc_frequency_ratio(network_->frequency_hz, t_s);
+  if (!ratio) {
+    result.not_evaluated.push_back(
+        {"i_dc", "the time is beyond 12.5 cycles, where the standard gives no frequency"});
+    return result;
+  }
+  const auto z = dc_impedance_pu(*ratio, fault.fault.bus);
   if (!z || !(z->imag() > 0)) {
-    q.not_evaluated.push_back({"i_dc", "the equivalent-frequency impedance is not inductive"});
-    return;
+    result.not_evaluated.push_back({"i_dc", "the equivalent-frequency impedance is not inductive"});
+    return result;
   }
-  q.idc_ka =
-      dc_current_ka(q.ikss_ka, network_->frequency_hz, options_.tmin_s, z->real() / z->imag() * *dc_ratio_);
-  if (q.ib_ka) q.ib_asymmetric_ka = std::hypot(*q.ib_ka, *q.idc_ka);
+  result.idc_ka = dc_current_ka(fault.current_ka + converter_ka(fault), network_->frequency_hz, t_s,
+                                z->real() / z->imag() * *ratio);
+  return result;
+}
+
+double Evaluation::converter_ka(const FaultResult& fault) const {
+  if (converter_pu_.empty()) return 0;
+  const BusIndex bus = fault.fault.bus;
+  return fault.current_ka * converter_pu_[at(solver_->model().node_of_bus[at(bus)])] /
+         solver_->prefault_pu(bus);
 }
 
 void Evaluation::steady(const FaultResult& fault, Quantities& q) const {
@@ -331,15 +373,17 @@ Quantities Evaluation::of(const FaultResult& fault) const {
   const BusIndex bus = fault.fault.bus;
   q.c = solver_->prefault_pu(bus);
   if (!fault.has_source) return q;
-  q.ikss_ka = fault.current_ka;
-  if (!converter_pu_.empty()) {
-    q.converter_ka = fault.current_ka * converter_pu_[at(solver_->model().node_of_bus[at(bus)])] / q.c;
-    q.ikss_ka += q.converter_ka;
-  }
+  q.converter_ka = converter_ka(fault);
+  q.ikss_ka = fault.current_ka + q.converter_ka;
   q.skss_mva = std::sqrt(3.0) * solver_->model().nominal_kv[at(bus)] * q.ikss_ka;
   if (q.ikss_ka == 0) return q;
   peak(fault, q);
-  breaking(fault, q);
+  AtTime at_tmin = at_time(fault, options_.tmin_s);
+  q.ib_ka = at_tmin.ib_ka;
+  q.idc_ka = at_tmin.idc_ka;
+  if (q.ib_ka && q.idc_ka) q.ib_asymmetric_ka = std::hypot(*q.ib_ka, *q.idc_ka);
+  q.machines = std::move(at_tmin.machines);
+  std::move(at_tmin.not_evaluated.begin(), at_tmin.not_evaluated.end(), std::back_inserter(q.not_evaluated));
   steady(fault, q);
   thermal(q);
   return q;

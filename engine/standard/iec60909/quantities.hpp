@@ -15,6 +15,8 @@ struct Options {
   KappaMethod kappa = KappaMethod::c;
   double tmin_s = 0.1;    ///< minimum time delay, for Ib and i_dc
   double duration_s = 1;  ///< Tk, for Ith
+  /// Times at which Evaluation::at_time will be asked: contact parting times of devices.
+  std::vector<double> parting_s;
 };
 
 /// A quantity without a value, and the figure that it lacks.
@@ -29,6 +31,13 @@ struct MachinePart {
   double ratio = 0;    ///< I"kG / I_rG
   double mu = 1;
   std::optional<double> q;  ///< of an asynchronous motor
+};
+
+/// Ib and i_dc at one time; an empty one is explained in not_evaluated.
+struct AtTime {
+  std::optional<double> ib_ka, idc_ka;
+  std::vector<MachinePart> machines;  ///< three-phase only
+  std::vector<NotEvaluated> not_evaluated;
 };
 
 /// Currents are rms in kA but for ip_ka and idc_ka. Unbalanced faults: kappa is that of the three-phase fault
@@ -74,6 +83,8 @@ class Evaluation {
              int threads);
 
   [[nodiscard]] Quantities of(const FaultResult& fault) const;
+  /// The same fault at another time, which is tmin or one of Options::parting_s.
+  [[nodiscard]] AtTime at_time(const FaultResult& fault, double t_s) const;
   [[nodiscard]] const std::vector<MotorRule>& motor_rules() const { return motor_rules_; }
   /// What a reader must know: converters taken as constant currents or left out.
   [[nodiscard]] const std::vector<std::string>& notes() const { return notes_; }
@@ -92,12 +103,15 @@ class Evaluation {
   };
 
   void build_companions(int threads);
+  void add_companions(std::vector<SequenceModel>& models, int threads);
+  [[nodiscard]] std::optional<Complex> dc_impedance_pu(double ratio, BusIndex bus) const;
+  [[nodiscard]] double converter_ka(const FaultResult& fault) const;
   void collect_machines();
   void find_converters();
   void find_branch_ratios();
   void judge_motor_rules();
   void peak(const FaultResult& fault, Quantities& q) const;
-  void breaking(const FaultResult& fault, Quantities& q) const;
+  [[nodiscard]] std::optional<double> breaking_ka(const FaultResult& fault, double t_s, AtTime& result) const;
   void steady(const FaultResult& fault, Quantities& q) const;
   void thermal(Quantities& q) const;
   [[nodiscard]] double initial_ka(Complex z_pu, BusIndex bus) const;
@@ -106,8 +120,9 @@ class Evaluation {
   const FaultSolver* solver_;
   Options options_;
   CaseKind kind_;
-  std::optional<double> dc_ratio_;
-  std::optional<CompanionNetworks> companions_;
+  std::optional<CompanionNetworks> companions_;   ///< at the peak, without motors, i_dc at tmin
+  std::vector<double> dc_ratios_;                 ///< frequency ratios of i_dc: tmin's first where it has one
+  std::vector<CompanionNetworks> dc_companions_;  ///< for those that companions_ has no room for
   std::vector<Machine> machines_;
   std::vector<std::vector<std::uint32_t>> machines_at_node_;
   std::optional<NearSources> near_;
