@@ -20,10 +20,12 @@ constexpr const char* kOverview =
     "  kiloamp check CASE            read a case and judge its data\n"
     "  kiloamp sweep CASE            faults at every bus\n"
     "  kiloamp fault CASE --bus ID   faults at one bus, with currents and voltages around it\n"
-    "  kiloamp outages CASE          largest and smallest current at every bus over all single outages\n\n"
+    "  kiloamp outages CASE          largest and smallest current at every bus over all single outages\n"
+    "  kiloamp duty CASE             breakers, fuses and switchboards against what the network asks of "
+    "them\n\n"
     "kiloamp VERB --help explains a verb. CASE is a case file, or - for standard input.\n"
     "Exit codes: 0 the study ran; 1 it could not be computed, or a cross-check disagreed; 2 the input is "
-    "wrong.";
+    "wrong; 3 duty --strict found a device over or not evaluated.";
 
 const std::vector<std::string_view> kFaultWords{"3ph", "lg", "ll", "llg"};
 
@@ -101,7 +103,8 @@ CLI::Validator into(std::string (*read)(const std::string&, Target&), Target& ta
 }
 
 struct Texts {  // what the custom options were given as
-  std::string kinds, prefault, phase, earth, method, edition, kappa, case_kind, elements;
+  std::string kinds, prefault, phase, earth, method, edition, kappa, case_kind, elements, small_motors;
+  std::optional<double> marginal_percent;
   std::optional<double> tmin_s, duration_s;
   bool one_kind_only = false;  // of the verb whose options are being made
   std::optional<int> depth;
@@ -142,35 +145,22 @@ std::string read_elements(const std::string& text, std::vector<ElementKind>& kin
   return {};
 }
 
-// What every study takes: case, state, prefault voltage, impedances, output.
-void add_study_options(CLI::App& app, Command& c, Texts& t) {
+// Case, prefault voltage, method's own options, threads, output.
+void add_common_options(CLI::App& app, Command& c, Texts& t) {
   app.add_option("CASE", c.case_file, "case file, or - for standard input")->required();
-  app.add_option("--scenario", c.scenario, "state of the network, by its id in the case. Default: as written")
-      ->type_name("ID");
-  app.add_option("--case-kind", t.case_kind,
-                 "max: largest currents (default); min: feeders at min, hot conductors, motors out" +
-                     std::string(t.one_kind_only ? "" : "; both: side by side"))
-      ->type_name("KIND")
-      ->check(one_of(t.one_kind_only ? std::vector<std::string_view>{"max", "min"}
-                                     : std::vector<std::string_view>{"max", "min", "both"}));
-  app.add_option("--method", t.method, "classical: voltage behind impedance (default); iec60909: IEC 60909-0")
-      ->type_name("METHOD")
-      ->check(one_of({"classical", "iec60909"}));
   app.add_option("--edition", t.edition, "iec60909: edition of the voltage factors, 2016 (default) or 2001")
       ->type_name("YEAR")
       ->check(one_of({"2016", "2001"}));
+  app.add_option(
+         "--small-motors", t.small_motors,
+         "c37: induction motors below 50 hp in the first cycle: in (combined network, default) or out")
+      ->type_name("WORD")
+      ->check(one_of({"in", "out"}));
   app.add_option("--prefault", t.prefault,
                  "prefault voltage: case (as the case gives it, 1 pu where it does not; default), flat (1 "
                  "pu), or a number in pu")
       ->type_name("U")
       ->check(into(read_prefault, c.study.prefault));
-  app.add_option("--phase-impedance", t.phase,
-                 "ohm in each faulted phase, between it and the point where they join. Default: 0,0")
-      ->type_name("R,X")
-      ->check(into(read_impedance, c.study.phase_ohm));
-  app.add_option("--earth-impedance", t.earth, "ohm from that point to earth (lg, llg). Default: 0,0")
-      ->type_name("R,X")
-      ->check(into(read_impedance, c.study.earth_ohm));
   app.add_flag("--shunts", c.study.include_shunts,
                "keep line charging and shunts in positive and negative sequence too");
   app.add_option("--threads", c.study.threads, "threads; results do not depend on it. Default: all cores")
@@ -183,6 +173,30 @@ void add_study_options(CLI::App& app, Command& c, Texts& t) {
       ->type_name("FILE");
   app.add_flag("--timing", c.timing,
                "print on standard error what reading, model building, solving and writing took");
+}
+
+// What a study of faults takes besides: state, method, impedances.
+void add_study_options(CLI::App& app, Command& c, Texts& t) {
+  add_common_options(app, c, t);
+  app.add_option("--scenario", c.scenario, "state of the network, by its id in the case. Default: as written")
+      ->type_name("ID");
+  app.add_option("--case-kind", t.case_kind,
+                 "max: largest currents (default); min: feeders at min, hot conductors, motors out" +
+                     std::string(t.one_kind_only ? "" : "; both: side by side"))
+      ->type_name("KIND")
+      ->check(one_of(t.one_kind_only ? std::vector<std::string_view>{"max", "min"}
+                                     : std::vector<std::string_view>{"max", "min", "both"}));
+  app.add_option("--method", t.method,
+                 "classical: voltage behind impedance (default); iec60909: IEC 60909-0; c37: ANSI/IEEE C37")
+      ->type_name("METHOD")
+      ->check(one_of({"classical", "iec60909", "c37"}));
+  app.add_option("--phase-impedance", t.phase,
+                 "ohm in each faulted phase, between it and the point where they join. Default: 0,0")
+      ->type_name("R,X")
+      ->check(into(read_impedance, c.study.phase_ohm));
+  app.add_option("--earth-impedance", t.earth, "ohm from that point to earth (lg, llg). Default: 0,0")
+      ->type_name("R,X")
+      ->check(into(read_impedance, c.study.earth_ohm));
 }
 
 void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
@@ -220,6 +234,33 @@ void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
                  "csv: faults (default), one row per fault, or contributions, one row per element and fault")
       ->type_name("TABLE")
       ->check(one_of({"faults", "contributions"}));
+}
+
+void add_duty_options(CLI::App& app, Command& c, Texts& t) {
+  add_common_options(app, c, t);
+  app.add_option(
+         "--scenario", c.scenario,
+         "only this state of the network, by its id in the case. Default: as written and every scenario")
+      ->type_name("ID");
+  app.add_flag("--outages", c.duty.outages,
+               "also each single outage of a feeder, machine, line, transformer, reactor or coupler");
+  app.add_option(
+         "--method", t.method,
+         "judge only IEC devices (iec60909) or only ANSI/IEEE devices (c37). Default: both, each by its own")
+      ->type_name("METHOD")
+      ->check(one_of({"iec60909", "c37"}));
+  app.add_option("--duration", t.duration_s, "iec60909: duration Tk of short-time duty, in s. Default: 1")
+      ->type_name("S")
+      ->check(CLI::Range(1e-6, 100.0));
+  app.add_option("--kappa-method", t.kappa,
+                 "iec60909: a, b or c (default) of the standard's ways to find kappa")
+      ->type_name("LETTER")
+      ->check(one_of({"a", "b", "c"}));
+  app.add_option("--marginal", t.marginal_percent,
+                 "margins below this percentage of the rating are marginal. Default: 10")
+      ->type_name("PERCENT")
+      ->check(CLI::Range(0.0, 99.0));
+  app.add_flag("--strict", c.strict, "exit 3 when a device is over or not evaluated");
 }
 
 std::string describe(const CLI::App& app, const std::string& what) {
@@ -289,11 +330,19 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
       ->type_name("KINDS")
       ->check(into(read_elements, c.outages.kinds));
 
+  CLI::App* duty = app.add_subcommand("duty",
+                                      "Judges every breaker, switch, fuse and switchboard of the case by the "
+                                      "standard it was rated to: within, "
+                                      "marginal, over or\nnot evaluated, with the state, fault and side that "
+                                      "govern.\nExample: kiloamp duty plant.json "
+                                      "--outages --strict");
+  add_duty_options(*duty, c, t);
+
   // The nearest verb is worth more than the parser's own words for an unknown one.
-  if (!arguments.empty() && arguments.front().rfind('-', 0) != 0 && arguments.front() != "check" &&
-      arguments.front() != "sweep" && arguments.front() != "fault" && arguments.front() != "outages") {
-    err << "kiloamp: " << must_be(arguments.front(), {"check", "sweep", "fault", "outages"})
-        << "\nkiloamp --help explains\n";
+  static const std::vector<std::string_view> verbs{"check", "sweep", "fault", "outages", "duty"};
+  if (!arguments.empty() && arguments.front().rfind('-', 0) != 0 &&
+      std::find(verbs.begin(), verbs.end(), arguments.front()) == verbs.end()) {
+    err << "kiloamp: " << must_be(arguments.front(), verbs) << "\nkiloamp --help explains\n";
     return {std::nullopt, kInputWrong};
   }
   if (arguments.empty()) arguments.emplace_back("--help");
@@ -328,7 +377,13 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
   if (t.case_kind == "min") c.study.case_kind = CaseKind::min;
   c.both_kinds = t.case_kind == "both";
   const bool iec = t.method == "iec60909";
+  const bool c37 = t.method == "c37", is_duty = c.verb == "duty";
   if (iec) c.study.method = Method::iec60909;
+  if (c37) c.study.method = Method::c37;
+  if (t.small_motors == "out") c.study.c37.small_motors = ieee_c37::SmallMotors::omitted;
+  if (is_duty && iec) c.duty.family = DeviceFamily::iec;
+  if (is_duty && c37) c.duty.family = DeviceFamily::ansi;
+  if (t.marginal_percent) c.duty.marginal = *t.marginal_percent / 100;
   if (t.edition == "2001") c.study.iec60909.edition = iec60909::Edition::e2001;
   if (!t.kappa.empty()) c.study.iec60909.kappa = static_cast<iec60909::KappaMethod>(t.kappa[0] - 'a');
   c.study.iec60909.tmin_s = t.tmin_s.value_or(c.study.iec60909.tmin_s);
@@ -346,6 +401,15 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
       !t.edition.empty() || !t.kappa.empty() || t.tmin_s || t.duration_s || c.intermediate;
   const bool classical_options =
       !t.prefault.empty() || !t.phase.empty() || !t.earth.empty() || c.study.include_shunts;
+  if (misuse(!c37 && !t.small_motors.empty() && !(is_duty && !iec), "--small-motors goes with --method c37"))
+    return {std::nullopt, kInputWrong};
+  if (is_duty) {
+    if (misuse(c37 && iec_options, "--edition, --duration and --kappa-method go with --method iec60909"))
+      return {std::nullopt, kInputWrong};
+    if (misuse(iec && classical_options, "--prefault and --shunts go with --method c37"))
+      return {std::nullopt, kInputWrong};
+    return {std::move(c), kRan};
+  }
   if (misuse(!iec && iec_options,
              "--edition, --tmin, --duration, --kappa-method and --intermediate go with --method iec60909"))
     return {std::nullopt, kInputWrong};

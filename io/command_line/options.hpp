@@ -5,12 +5,13 @@
 #include <string>
 #include <vector>
 
+#include "engine/study/duty.hpp"
 #include "engine/study/outages.hpp"
 
 namespace kiloamp {
 
 struct Command {
-  std::string verb;  ///< check, sweep, fault, outages
+  std::string verb;  ///< check, sweep, fault, outages, duty
   std::string case_file;
   std::vector<std::string> buses;
   std::optional<std::string> scenario;
@@ -19,6 +20,8 @@ struct Command {
   std::string table = "faults";
   std::optional<std::string> output;
   OutageOptions outages;  ///< of the verb outages; threads are those of the study
+  DutyOptions duty;       ///< of the verb duty; study and scenario are those of the command
+  bool strict = false;    ///< duty: exit 3 unless every device is within or marginal
   bool contributions = false;
   bool both_kinds = false;  ///< study.case_kind is max; min is wanted too
   bool intermediate = false;

@@ -15,6 +15,7 @@
 #include "io/command_line/options.hpp"
 #include "io/command_line/whole_file.hpp"
 #include "reports/check_report.hpp"
+#include "reports/duty_report.hpp"
 #include "reports/fault_report.hpp"
 #include "reports/outage_report.hpp"
 
@@ -147,6 +148,28 @@ int run_outages(const Command& c, const Study& study, const ReadResult& read, St
   return kRan;
 }
 
+int run_duty(const Command& c, const ReadResult& read, Stages& stages, std::ostream& out, std::ostream& err) {
+  DutyOptions options = c.duty;
+  options.study = c.study;
+  options.scenario = c.study.scenario;
+  if (options.outages && ::isatty(STDERR_FILENO) != 0)
+    options.progress = [&err](std::size_t done, std::size_t all) {
+      err << "\rstates: " << done << " of " << all << (done == all ? "\n" : "") << std::flush;
+    };
+  Output output(c.output, out);
+  const DutyTable table = duty(*read.network, options);
+  stages.next("duty");
+  const DutyFormat format = c.format == "csv"    ? DutyFormat::csv
+                            : c.format == "json" ? DutyFormat::json
+                                                 : DutyFormat::text;
+  write_duty(*read.network, table, options, facts_of(c, read), format, output.sink());
+  output.commit();
+  stages.next("writing");
+  if (c.timing) stages.print(err);
+  const auto count = [&](Verdict v) { return table.count[static_cast<std::size_t>(v)]; };
+  return c.strict && count(Verdict::over) + count(Verdict::not_evaluated) > 0 ? kDutyNotProven : kRan;
+}
+
 // Solves and writes on the studies' threads. With `timing`, returns the part of the wall time that the
 // formulas took: that of the threads' own time.
 double write_faults(const Studies& studies, FaultReport& report, bool timing) {
@@ -250,6 +273,7 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
   if (!resolve(c, *read.network, err)) return kInputWrong;
   std::optional<Study> made, smallest;
   try {
+    if (c.verb == "duty") return run_duty(c, read, stages, out, err);
     if (c.both_kinds) {
       StudyOptions options = c.study;
       options.case_kind = CaseKind::min;

@@ -70,7 +70,7 @@ BOOST_AUTO_TEST_CASE(mistakes_on_the_command_line_are_named_with_what_was_meant)
     BOOST_TEST(lines(o.err).front() == first_line);
   };
   complains({"swep", plant},
-            "kiloamp: \"swep\" is not one of check, sweep, fault, outages; did you mean sweep?");
+            "kiloamp: \"swep\" is not one of check, sweep, fault, outages, duty; did you mean sweep?");
   complains({"sweep", plant, "--fautl", "lg"},
             "kiloamp: \"--fautl\" is not an option here; did you mean --fault?");
   complains({"sweep", plant, "--fault", "lgg"},
