@@ -4,7 +4,7 @@
 #include <string>
 
 #include "engine/network/id_table.hpp"
-#include "engine/study/study.hpp"
+#include "engine/study/duty.hpp"
 
 namespace kiloamp::test {
 
