@@ -193,7 +193,8 @@ std::string remarks_text(const Words& w) {
   std::string out;
   if (!missing.empty()) out += "\nNot evaluated\n" + missing;
   if (!notes.empty()) out += "\nNotes\n" + notes;
-  if (!fed.empty()) out += "\nSources of what governs (positive sequence, up to five)\n" + fed;
+  if (!fed.empty())
+    out += "\nSources of what governs (positive sequence, up to five; full converters left out)\n" + fed;
   return out;
 }
 

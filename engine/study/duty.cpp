@@ -267,6 +267,8 @@ void Duty::judge_bus(std::size_t state, const StudiedFault& fault, const FaultRe
   Through through;
   through.kind = result.fault.kind;
   through.fault = &fault;
+  detail::FaultInTime in_time(fault);
+  through.in_time = &in_time;
   const double converters_ka = fault.iec60909 != nullptr ? fault.iec60909->converter_ka : 0;
   through.bus_ka = result.current_ka + converters_ka;
   through.operating_kv = result.prefault_kv * std::sqrt(3.0);
@@ -380,6 +382,9 @@ void Duty::conclude(Standings& standings) {
       if (badness(check.verdict) > badness(duty.verdict)) duty.verdict = check.verdict;
       duty.checks.push_back(std::move(check));
     }
+    for (const DutyCheck& c : duty.checks)  // also where more source at the bus is not what made it so
+      if (c.verdict == Verdict::over && c.quantity != DutyQuantity::dc_component)
+        standing.headroom_ka = std::min(standing.headroom_ka, c.through_ka * (c.rating / c.duty - 1));
     if (std::isfinite(standing.headroom_ka))
       duty.headroom_mva = std::sqrt(3.0) * network_.bus(judged.device->bus).nominal_kv * standing.headroom_ka;
     if (!standing.finding.empty()) duty.findings.push_back(std::move(standing.finding));
@@ -403,18 +408,33 @@ void Duty::find_feeds(int threads) {
       wanted.emplace_back(family_of(device(network_, d.device).standard), d.checks[*d.governing].state, row);
   }
   std::sort(wanted.begin(), wanted.end());
-  std::unique_ptr<Study> study;
-  for (std::size_t i = 0; i < wanted.size(); ++i) {
-    const auto [family, state, row] = wanted[i];
-    if (i == 0 || family != std::get<0>(wanted[i - 1]) || state != std::get<1>(wanted[i - 1]))
-      study = std::make_unique<Study>(in_state(table_.states[state]),
-                                      study_options(family, table_.states[state], threads));
-    DeviceDuty& d = table_.devices[row];
-    const Device& data = device(network_, d.device);
-    const DutyCheck& check = d.checks[*d.governing];
-    const auto inside = study->inside_unit(data.bus);
-    d.feeds = detail::duty_feeds(inside ? *inside : *study, data.bus, data.branch, check.side,
-                                 check.through_ka, kFeeds);
+  for (std::size_t first = 0, last = 0; first < wanted.size(); first = last) {
+    const auto [family, state, row] = wanted[first];
+    while (last < wanted.size() && std::get<0>(wanted[last]) == family && std::get<1>(wanted[last]) == state)
+      ++last;
+    const Study study(in_state(table_.states[state]), study_options(family, table_.states[state], threads));
+    std::vector<std::optional<detail::FeedFinder>> finders(static_cast<std::size_t>(threads));
+    constexpr std::size_t kInTask = 16;
+    const auto tasks = static_cast<int>((last - first + kInTask - 1) / kInTask);
+    sparse::run_tasks(tasks, threads, [&, from = first, to = last](int task, int thread) {
+      auto& finder = finders[static_cast<std::size_t>(thread)];
+      if (!finder) finder.emplace(study);
+      const std::size_t start = from + static_cast<std::size_t>(task) * kInTask;
+      for (std::size_t i = start; i < std::min(to, start + kInTask); ++i) {
+        DeviceDuty& d = table_.devices[std::get<2>(wanted[i])];
+        const Device& data = device(network_, d.device);
+        const DutyCheck& check = d.checks[*d.governing];
+        const auto split = [&](detail::FeedFinder& in) {
+          d.feeds = in.split(data.bus, data.branch, check.side, check.through_ka, kFeeds);
+        };
+        if (const auto inside = study.inside_unit(data.bus)) {
+          detail::FeedFinder own(*inside);
+          split(own);
+        } else {
+          split(*finder);
+        }
+      }
+    });
   }
 }
 

@@ -85,9 +85,10 @@ struct DeviceDuty {
   Verdict verdict = Verdict::not_evaluated;  ///< the worst: over, not evaluated, marginal, within
   std::optional<std::size_t> governing;      ///< the check with the largest duty over rating
   /// How much more three-phase source at its bus brings the device to its rating, at unchanged X/R and decay;
-  /// negative: how much is too much. Empty: no three-phase fault was evaluated.
+  /// negative: what flows through it is too much by that. Empty: no three-phase fault was evaluated.
   std::optional<double> headroom_mva;
-  std::vector<DutyFeed> feeds;  ///< of the governing check, at most five, largest first; by positive sequence
+  /// Of the governing check, at most five, largest first; by positive sequence, full converters left out.
+  std::vector<DutyFeed> feeds;
   std::vector<std::string> findings;
 };
 

@@ -1,9 +1,6 @@
 #include "engine/study/duty_feeds.hpp"
 
 #include <algorithm>
-#include <map>
-
-#include "engine/fault/fault_network.hpp"
 
 namespace kiloamp::detail {
 
@@ -42,100 +39,89 @@ std::vector<std::uint32_t> own_terminals(const SequenceModel& m, BusIndex bus, E
   return own;
 }
 
-// Entries of some columns of Z, positive sequence, at some rows.
-class Columns {
- public:
-  Columns(const FaultNetwork& solved, std::vector<Node> columns, const std::vector<sparse::Index>& rows)
-      : columns_(std::move(columns)) {
-    auto solver = solved.factors().sparse_solver();
-    constexpr std::size_t kBlock = decltype(solver)::kBlock;
-    std::vector<sparse::Index> wanted = rows;
-    for (const Node node : columns_) wanted.push_back(static_cast<sparse::Index>(node));
-    z_.resize(columns_.size());
-    for (std::size_t first = 0; first < columns_.size(); first += kBlock) {
-      const std::size_t count = std::min(kBlock, columns_.size() - first);
-      solver.clear();
-      for (std::size_t c = 0; c < count; ++c)
-        solver.put(static_cast<int>(c), static_cast<sparse::Index>(columns_[first + c]), {0, 1, 0});
-      solver.solve_at(wanted);
-      for (std::size_t c = 0; c < count; ++c)
-        for (const sparse::Index row : wanted)
-          z_[first + c][row] = solver.get(static_cast<int>(c), row)[kPositive];
-    }
-  }
-  [[nodiscard]] Complex at(Node column, Node row) const {
-    const auto c = std::find(columns_.begin(), columns_.end(), column) - columns_.begin();
-    return z_[static_cast<std::size_t>(c)].at(static_cast<sparse::Index>(row));
-  }
-
- private:
-  std::vector<Node> columns_;
-  std::vector<std::map<sparse::Index, Complex>> z_;
-};
-
 }  // namespace
 
-std::vector<DutyFeed> duty_feeds(const Study& study, BusIndex bus, const std::optional<ElementRef>& branch,
-                                 DutySide side, double through_ka, std::size_t most) {
-  const SequenceModel& m = study.model();
-  const FaultNetwork& solved = study.solver().solved();
+FeedFinder::FeedFinder(const Study& study)
+    : model_(study.model()), solved_(study.solver().solved()), solver_(solved_.factors().sparse_solver()) {
+  for (const Block& b : model_.blocks) {
+    const auto t = model_.block_terminals[b.first];
+    if (!is_source(model_.terminals[t].element.kind)) continue;
+    sources_.push_back({t, model_.block_y[b.first_y][kPositive]});
+    rows_.push_back(static_cast<sparse::Index>(model_.terminals[t].node));
+  }
+}
+
+void FeedFinder::solve_columns(const std::vector<Node>& nodes) {
+  std::vector<sparse::Index> wanted = rows_;
+  for (const Node node : nodes) wanted.push_back(static_cast<sparse::Index>(node));
+  columns_.assign(nodes.size(), Column(wanted.size()));
+  constexpr std::size_t kBlock = Solver::kBlock;
+  for (std::size_t first = 0; first < nodes.size(); first += kBlock) {
+    const std::size_t count = std::min(kBlock, nodes.size() - first);
+    solver_.clear();
+    for (std::size_t c = 0; c < count; ++c)
+      solver_.put(static_cast<int>(c), static_cast<sparse::Index>(nodes[first + c]), {0, 1, 0});
+    solver_.solve_at(wanted);
+    for (std::size_t c = 0; c < count; ++c)
+      for (std::size_t w = 0; w < wanted.size(); ++w)
+        columns_[first + c][w] = solver_.get(static_cast<int>(c), wanted[w])[kPositive];
+  }
+}
+
+std::vector<DutyFeed> FeedFinder::split(BusIndex bus, const std::optional<ElementRef>& branch, DutySide side,
+                                        double through_ka, std::size_t most) {
+  const SequenceModel& m = model_;
   const Node k = m.node_of_bus[at(bus)];
   std::vector<std::uint32_t> own;
   if (side != DutySide::total) {
     own = own_terminals(m, bus, *branch);
     if (own.empty()) return {};
   }
-  struct Source {
-    std::uint32_t terminal;
+  // Own branch's other ends: their node's column, and y into the terminal at k.
+  struct End {
+    std::size_t column;
     Complex y;
   };
-  std::vector<Source> sources;
-  std::vector<sparse::Index> rows;
-  for (const Block& b : m.blocks) {
-    const auto t = m.block_terminals[b.first];
-    if (!is_source(m.terminals[t].element.kind)) continue;
-    sources.push_back({t, m.block_y[b.first_y][kPositive]});
-    rows.push_back(static_cast<sparse::Index>(m.terminals[t].node));
-  }
-  std::vector<Node> columns{k};
-  const auto block_of = [&](std::uint32_t t) -> const Block& { return m.blocks[solved.slots(t)[0].block]; };
+  std::vector<Node> nodes{k};
+  std::vector<End> ends;
   for (const auto t : own) {
-    const Block& b = block_of(t);
+    const auto& slot = solved_.slots(t)[0];
+    const Block& b = m.blocks[slot.block];
     for (std::uint32_t q = 0; q < b.count; ++q) {
       const Node node = m.terminals[m.block_terminals[b.first + q]].node;
-      if (std::find(columns.begin(), columns.end(), node) == columns.end()) columns.push_back(node);
+      if (node == k) continue;  // at no voltage
+      auto place = std::find(nodes.begin(), nodes.end(), node);
+      if (place == nodes.end()) place = nodes.insert(nodes.end(), node);
+      ends.push_back({static_cast<std::size_t>(place - nodes.begin()),
+                      m.block_y[b.first_y + slot.position * b.count + q][kPositive]});
     }
   }
-  const Columns z(solved, columns, rows);
-  const Complex z_kk = z.at(k, k);
-  std::vector<Complex> parts;
+  solve_columns(nodes);
+  const Column& of_k = columns_.front();
+  const Complex z_kk = of_k[sources_.size()];
+  std::vector<Complex> parts(sources_.size());
   Complex sum = 0;
-  for (const Source& s : sources) {
-    const Node j = m.terminals[s.terminal].node;
-    const Complex z_jk = z.at(k, j);
+  for (std::size_t j = 0; j < sources_.size(); ++j) {
+    const Complex z_jk = of_k[j];
+    const Complex total_part = sources_[j].y * z_jk;
     Complex own_part = 0;
-    for (const auto t : own) {
-      if (t == s.terminal) own_part += s.y * z_kk;
-      const Block& b = block_of(t);
-      const std::uint32_t p = solved.slots(t)[0].position;
-      for (std::uint32_t q = 0; q < b.count; ++q) {
-        const Node node = m.terminals[m.block_terminals[b.first + q]].node;
-        const Complex v = node == k ? Complex(0) : z.at(node, j) - z.at(node, k) * z_jk / z_kk;
-        own_part -= m.block_y[b.first_y + p * b.count + q][kPositive] * v * s.y * z_kk;
-      }
+    for (const auto t : own)
+      if (t == sources_[j].terminal) own_part += sources_[j].y * z_kk;
+    for (const End& end : ends) {
+      const Complex v = columns_[end.column][j] - of_k[sources_.size() + end.column] * z_jk / z_kk;
+      own_part -= end.y * v * sources_[j].y * z_kk;
     }
-    const Complex total_part = s.y * z_jk;
-    parts.push_back(side == DutySide::total ? total_part
-                    : side == DutySide::own ? own_part
-                                            : total_part - own_part);
-    sum += parts.back();
+    parts[j] = side == DutySide::total ? total_part
+               : side == DutySide::own ? own_part
+                                       : total_part - own_part;
+    sum += parts[j];
   }
   std::vector<DutyFeed> feeds;
   if (std::abs(sum) < kNoPart) return feeds;
-  for (std::size_t i = 0; i < sources.size(); ++i) {
-    const double share = (parts[i] / sum).real();
+  for (std::size_t j = 0; j < sources_.size(); ++j) {
+    const double share = (parts[j] / sum).real();
     if (share > kNoPart)
-      feeds.push_back({m.terminals[sources[i].terminal].element, share * through_ka, share});
+      feeds.push_back({m.terminals[sources_[j].terminal].element, share * through_ka, share});
   }
   std::stable_sort(feeds.begin(), feeds.end(),
                    [](const auto& a, const auto& b) { return a.share > b.share; });

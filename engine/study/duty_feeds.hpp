@@ -1,17 +1,40 @@
 // Which sources a device's current comes from.
 #pragma once
+#include "engine/fault/fault_network.hpp"
 #include "engine/study/duty.hpp"
 
 namespace kiloamp::detail {
 
-/// Splits `through_ka` over the sources of the solved network by superposition, positive sequence: source j
-/// alone drives
+/// One thread's way of splitting currents over the sources of a solved network by superposition, positive
+/// sequence: source j alone drives
 ///   I_total,j = y_j Z_jk          of the fault current at k, and through the own branch's terminals
 ///   I_own,j = -sum_q y_pq (Z_qj - Z_qk Z_jk / Z_kk) y_j Z_kk + [j at the terminal itself] y_j Z_kk.
-/// A part counts with its share in phase with the whole. Largest first, at most `most`; empty when the branch
-/// is a closed switch in a loop of switches (its share rests on an assumption), or has no current.
-[[nodiscard]] std::vector<DutyFeed> duty_feeds(const Study& study, BusIndex bus,
-                                               const std::optional<ElementRef>& branch, DutySide side,
-                                               double through_ka, std::size_t most);
+/// A part counts with its share in phase with the whole.
+class FeedFinder {
+ public:
+  explicit FeedFinder(const Study& study);
+
+  /// Largest first, at most `most`; empty when the branch is a closed switch in a loop of switches (its share
+  /// rests on an assumption), or has no current.
+  [[nodiscard]] std::vector<DutyFeed> split(BusIndex bus, const std::optional<ElementRef>& branch,
+                                            DutySide side, double through_ka, std::size_t most);
+
+ private:
+  using Solver = sparse::Factorisation<Complex, 3>::SparseSolver;
+  struct Source {
+    std::uint32_t terminal;
+    Complex y;
+  };
+  /// A column of Z where it is asked for: at the sources in their order, then at the columns' own nodes.
+  using Column = std::vector<Complex>;
+  void solve_columns(const std::vector<Node>& nodes);
+
+  const SequenceModel& model_;
+  const FaultNetwork& solved_;
+  Solver solver_;
+  std::vector<Source> sources_;
+  std::vector<sparse::Index> rows_;  ///< of the sources
+  std::vector<Column> columns_;
+};
 
 }  // namespace kiloamp::detail

@@ -6,13 +6,25 @@
 
 namespace kiloamp::detail {
 
+/// Ib and i_dc of one fault at the times that devices ask for; each is computed once.
+class FaultInTime {
+ public:
+  explicit FaultInTime(const StudiedFault& fault) : fault_(&fault) {}
+  [[nodiscard]] const iec60909::AtTime& at(double t_s);
+
+ private:
+  const StudiedFault* fault_;
+  std::vector<std::pair<double, iec60909::AtTime>> known_;
+};
+
 /// Current through a device for one fault, and what the method says of the fault.
 struct Through {
   FaultKind kind = FaultKind::three_phase;
   DutySide side = DutySide::total;
   const StudiedFault* fault = nullptr;
-  double ka = 0;      ///< initial or first-cycle ac rms through the device
-  double bus_ka = 0;  ///< of the whole fault
+  double ka = 0;                   ///< initial or first-cycle ac rms through the device
+  double bus_ka = 0;               ///< of the whole fault
+  FaultInTime* in_time = nullptr;  ///< IEC
   // C37 only
   double interrupting_ka = 0;
   double operating_kv = 0;  ///< prefault, line to line

@@ -3,6 +3,7 @@
 
 #include "engine/standard/ieee_c37/formulas.hpp"
 #include "engine/study/duty_rules.hpp"
+#include "engine/study/rounded_text.hpp"
 
 namespace kiloamp::detail {
 
@@ -13,11 +14,6 @@ using namespace ieee_c37;
 constexpr const char* kNoRatio = "X/R of the separate networks is not positive";
 constexpr double kStandardTau_s = 0.045;
 constexpr double kMediumVoltageFuseTestXOverR = 15;  // common practice, no source
-
-std::string with_decimals(double value, int decimals) {
-  std::string text = std::to_string(value);
-  return text.substr(0, text.find('.') + 1 + static_cast<std::size_t>(decimals));
-}
 
 bool is_line_to_ground(const Through& t) { return t.kind == FaultKind::line_to_ground; }
 
@@ -113,7 +109,7 @@ void add_close_latch(std::vector<Rule>& rules, const Device& d, const RuleFacts&
     }
     const double rating = plate ? *plate : ratio * capability.most_ka;
     const std::string note =
-        plate ? "" : "rating " + with_decimals(ratio, 1) + " times the largest interrupting current";
+        plate ? "" : "rating " + rounded_text(ratio, 1) + " times the largest interrupting current";
     rule.evaluate = [=](const Through& t) -> Outcome {
       const auto& xr = t.fault->c37->first_cycle.x_over_r;
       if (!xr) return std::string(kNoRatio);
@@ -164,9 +160,9 @@ void add_tested(std::vector<Rule>& rules, const Device& d, double test, double (
 
 void add_low_voltage(std::vector<Rule>& rules, const Device& d, double standard_power_factor, bool fused) {
   const double power_factor = d.test_power_factor.value_or(standard_power_factor);
-  add_tested(rules, d, test_x_over_r(power_factor), fused ? rms_based_factor : peak_based_factor,
-             "test power factor " + with_decimals(power_factor, 2) +
-                 (d.test_power_factor ? "" : " of the standard"));
+  add_tested(
+      rules, d, test_x_over_r(power_factor), fused ? rms_based_factor : peak_based_factor,
+      "test power factor " + rounded_text(power_factor, 2) + (d.test_power_factor ? "" : " of the standard"));
 }
 
 bool is_high_voltage_breaker(const Device& d) {
@@ -230,8 +226,8 @@ std::string simplified_finding(const Device& d, const Through& t) {
   const double ex_ka = network.ex_ka * t.interrupting_ka / network.ez_ka, most_ka = capability.at(t);
   return std::string("simplified check, ") +
          (is_line_to_ground(t) ? "line to ground" : "three-phase or two-phase") + ": E/X " +
-         with_decimals(ex_ka, 2) + " kA, X/R " + with_decimals(*network.x_over_r, 1) + " against " +
-         with_decimals(most_ka, 2) + " kA " +
+         rounded_text(ex_ka, 2) + " kA, X/R " + rounded_text(*network.x_over_r, 1) + " against " +
+         rounded_text(most_ka, 2) + " kA " +
          (simplified_check(ex_ka, most_ka, *network.x_over_r, is_line_to_ground(t))
               ? "suffices"
               : "does not suffice: the factors decide");

@@ -2,6 +2,7 @@
 
 #include "engine/standard/switchgear/iec_ratings.hpp"
 #include "engine/study/duty_rules.hpp"
+#include "engine/study/rounded_text.hpp"
 
 namespace kiloamp::detail {
 
@@ -9,21 +10,12 @@ namespace {
 
 using namespace switchgear;
 
-std::string with_decimals(double value, int decimals) {
-  std::string text = std::to_string(value);
-  return text.substr(0, text.find('.') + 1 + static_cast<std::size_t>(decimals));
-}
-
 // What the total at the bus has, in the proportion of the device's part.
 Outcome in_proportion(const Through& t, const std::optional<double>& of_total_ka, double rating,
                       const char* why) {
   if (!of_total_ka) return std::string(why);
   const double factor = t.bus_ka > 0 ? *of_total_ka / t.bus_ka : 0;
   return Loading{t.ka * factor, rating, t.ka, std::nullopt, factor, std::nullopt, {}};
-}
-
-iec60909::AtTime at_time(const Through& t, double t_s) {
-  return t.fault->study->iec60909()->at_time(t.fault->result, t_s);
 }
 
 std::string why_not(const iec60909::AtTime& at, const char* quantity) {
@@ -85,7 +77,7 @@ void add_high_voltage_breaking(std::vector<Rule>& rules, const Device& d, const 
   const double rating_ka = *d.breaking_ka, total_rating_ka = total_rms_ka(rating_ka, rated_dc);
   const std::string note = d.dc_time_constant_ms ? "" : "time constant 45 ms of the standard";
   symmetrical.evaluate = [=](const Through& t) -> Outcome {
-    const auto at = at_time(t, parting_s);
+    const auto& at = t.in_time->at(parting_s);
     if (!at.ib_ka) return why_not(at, "Ib");
     const double ka = symmetrical_at(t, *at.ib_ka);
     return Loading{ka, rating_ka, ka, {}, {}, {}, {}};
@@ -95,7 +87,7 @@ void add_high_voltage_breaking(std::vector<Rule>& rules, const Device& d, const 
     double ac_ka, dc_ka;
   };
   const auto parts = [=](const Through& t, std::string& why) -> std::optional<Parts> {
-    const auto at = at_time(t, parting_s);
+    const auto& at = t.in_time->at(parting_s);
     if (!at.ib_ka || !at.idc_ka) {
       why = why_not(at, at.ib_ka ? "i_dc" : "Ib");
       return std::nullopt;
@@ -117,7 +109,7 @@ void add_high_voltage_breaking(std::vector<Rule>& rules, const Device& d, const 
     const double percent = p->ac_ka > 0 ? 100 * p->dc_ka / (std::sqrt(2.0) * p->ac_ka) : 0;
     Loading loading{percent, rated_dc, p->ac_ka, {}, {}, {}, note, false, total_ka / total_rating_ka, {}};
     if (percent > rated_dc && total_ka <= total_rating_ka)
-      loading.undecided = with_decimals(percent, 1) + " % above the rated " + with_decimals(rated_dc, 1) +
+      loading.undecided = rounded_text(percent, 1) + " % above the rated " + rounded_text(rated_dc, 1) +
                           " % at a total current inside the rating: the last loop decides, ask the maker";
     return loading;
   };
@@ -132,8 +124,8 @@ void add_low_voltage_breaking(std::vector<Rule>& rules, const Device& d) {
       if (const auto z = t.fault->result.z1_ohm; z && class_power_factor > 0) {
         const double power_factor = z->real() / std::abs(*z);
         if (power_factor < class_power_factor)
-          loading.note = "power factor " + with_decimals(power_factor, 2) + " below the " +
-                         with_decimals(class_power_factor, 2) + " of its test: the making current decides";
+          loading.note = "power factor " + rounded_text(power_factor, 2) + " below the " +
+                         rounded_text(class_power_factor, 2) + " of its test: the making current decides";
       }
       return loading;
     };
@@ -158,6 +150,12 @@ void add_low_voltage_breaking(std::vector<Rule>& rules, const Device& d) {
 
 }  // namespace
 
+const iec60909::AtTime& FaultInTime::at(double t_s) {
+  for (const auto& [time, value] : known_)
+    if (time == t_s) return value;
+  return known_.emplace_back(t_s, fault_->study->iec60909()->at_time(fault_->result, t_s)).second;
+}
+
 std::optional<double> parting_time_s(const Device& d, double frequency_hz) {
   if (d.standard != DeviceStandard::iec62271_100 || !d.opening_time_s || !d.breaking_ka) return std::nullopt;
   return switchgear::parting_time_s(*d.opening_time_s, frequency_hz);
@@ -172,7 +170,7 @@ std::vector<Rule> iec_rules(const Device& d, const RuleFacts& facts) {
       if (d.breaking_ka) {
         const double tau_s = d.dc_time_constant_ms.value_or(1000 * kStandardTau_s) / 1000;
         missing += " (the standard's ratio would make it " +
-                   with_decimals(peak_factor(facts.frequency_hz, tau_s) * *d.breaking_ka, 1) +
+                   rounded_text(peak_factor(facts.frequency_hz, tau_s) * *d.breaking_ka, 1) +
                    ": confirm on the plate)";
       }
       add_peak(rules, DutyQuantity::making_peak, d.making_peak_ka, missing);

@@ -4,6 +4,8 @@
 #include <chrono>
 #include <cmath>
 
+#include "engine/study/rounded_text.hpp"
+
 namespace kiloamp {
 
 namespace {
@@ -26,11 +28,6 @@ std::vector<Prefault> prefault_of(const Network& network, const StudyOptions& op
 
 std::string counted(std::size_t count, const char* one, const char* many) {
   return std::to_string(count) + " " + (count == 1 ? one : many);
-}
-
-std::string one_decimal(double value) {
-  std::string text = std::to_string(std::round(value * 10) / 10);
-  return text.substr(0, text.find('.') + 2);
 }
 
 template <typename Section>
@@ -225,8 +222,8 @@ void Study::warn_of_x_over_r() {
     const double times = *ratios.x_over_r / *ratios.complex_x_over_r;
     if (std::max(times, 1 / times) <= most) continue;
     most = std::max(times, 1 / times);
-    worst = network_.bus(bus).id + ": " + one_decimal(*ratios.x_over_r) + " against " +
-            one_decimal(*ratios.complex_x_over_r);
+    worst = network_.bus(bus).id + ": " + detail::rounded_text(*ratios.x_over_r, 1) + " against " +
+            detail::rounded_text(*ratios.complex_x_over_r, 1);
   }
   if (count > 0)
     warnings_.push_back(

@@ -3,9 +3,11 @@
 #include <algorithm>
 #include <cassert>
 #include <cmath>
-#include <future>
 #include <limits>
 #include <map>
+#include <span>
+
+#include "engine/sparse/run_tasks.hpp"
 
 namespace kiloamp::iec60909 {
 
@@ -61,30 +63,27 @@ Evaluation::Evaluation(const Network& corrected, const FaultSolver& solver, cons
 
 void Evaluation::build_companions(int threads) {
   const Network& n = *network_;
-  const auto policy = threads > 1 ? std::launch::async : std::launch::deferred;
-  auto at_peak =
-      std::async(policy, [&] { return build_sequence_model(at_frequency(n, kEquivalentFrequency, true)); });
-  auto no_motors = std::async(policy, [&] {
-    Network still = n;
-    for (InductionMotor& m : still.induction_motors) m.in_service = false;
-    return build_sequence_model(still);
+  std::vector<SequenceModel> models(kAtDc + dc_ratios_.size());
+  sparse::run_tasks(static_cast<int>(models.size()), threads, [&](int task, int) {
+    const auto which = static_cast<std::size_t>(task);
+    if (which == kNoMotors) {
+      Network still = n;
+      for (InductionMotor& m : still.induction_motors) m.in_service = false;
+      models[which] = build_sequence_model(still);
+    } else {
+      const bool peak = which == kAtPeak;
+      models[which] = build_sequence_model(
+          at_frequency(n, peak ? kEquivalentFrequency : dc_ratios_[which - kAtDc], peak));
+    }
   });
-  std::vector<SequenceModel> models;
-  models.push_back(at_peak.get());
-  models.push_back(no_motors.get());
-  for (const double ratio : dc_ratios_) {
-    if (models.size() == CompanionNetworks::kMost) add_companions(models, threads);
-    models.push_back(build_sequence_model(at_frequency(n, ratio, false)));
+  constexpr std::size_t kMost = CompanionNetworks::kMost;
+  for (std::size_t first = 0; first < models.size(); first += kMost) {
+    const auto some = std::span(models).subspan(first, std::min(kMost, models.size() - first));
+    if (first == 0)
+      companions_.emplace(*solver_, some, threads);
+    else
+      dc_companions_.emplace_back(*solver_, some, threads);
   }
-  add_companions(models, threads);
-}
-
-void Evaluation::add_companions(std::vector<SequenceModel>& models, int threads) {
-  if (!companions_)
-    companions_.emplace(*solver_, models, threads);
-  else
-    dc_companions_.emplace_back(*solver_, models, threads);
-  models.clear();
 }
 
 std::optional<Complex> Evaluation::dc_impedance_pu(double ratio, BusIndex bus) const {

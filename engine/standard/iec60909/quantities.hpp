@@ -103,7 +103,6 @@ class Evaluation {
   };
 
   void build_companions(int threads);
-  void add_companions(std::vector<SequenceModel>& models, int threads);
   [[nodiscard]] std::optional<Complex> dc_impedance_pu(double ratio, BusIndex bus) const;
   [[nodiscard]] double converter_ka(const FaultResult& fault) const;
   void collect_machines();
