@@ -41,4 +41,17 @@ SequenceFault connect_sequences(FaultKind kind, const TheveninData& z, Complex e
   return result;
 }
 
+Complex earth_fault_shift_pu(FaultKind kind, const TheveninData& z, Complex e,
+                             const BySequence<Complex>& current, Complex zf) {
+  const Complex v1 = e - z.z1 * current[kPositive], v2 = -z.z2 * current[kNegative];
+  if (kind == FaultKind::line_to_ground) return -(v1 + v2);
+  return zf * to_phases(current)[1] - std::conj(kA) * v1 - kA * v2;
+}
+
+BySequence<Complex> turned(const BySequence<Complex>& value, int clock) {
+  constexpr double kPi = 3.14159265358979323846;
+  const Complex turn = std::polar(1.0, -kPi / 6 * clock);
+  return {value[kZero], value[kPositive] * turn, value[kNegative] * std::conj(turn)};
+}
+
 }  // namespace kiloamp

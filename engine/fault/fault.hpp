@@ -50,6 +50,14 @@ struct TheveninData {
 [[nodiscard]] SequenceFault connect_sequences(FaultKind kind, const TheveninData& z, Complex e, Complex zf,
                                               Complex ze);
 
+/// Potential of the neutral [pu] that an earth fault gives an island without a path to earth, where no
+/// zero-sequence current flows: V_a = 0 on line to ground, V_b = zf I_b on double line to ground.
+[[nodiscard]] Complex earth_fault_shift_pu(FaultKind kind, const TheveninData& z, Complex e,
+                                           const BySequence<Complex>& current, Complex zf);
+
+/// Values of a bus that lags the faulted one by `clock` times 30 degrees, from those without phase shifts.
+[[nodiscard]] BySequence<Complex> turned(const BySequence<Complex>& value, int clock);
+
 /// Current from an element into a bus.
 struct Contribution {
   ElementRef element;

@@ -57,13 +57,6 @@ std::optional<double> peak_ka(double current_ka, Complex loop) {
   return kappa * std::sqrt(2.0) * current_ka;
 }
 
-// Turns internal (shift-free) sequence values at a bus that lags the faulted one by `clock` times 30 degrees
-// into real ones.
-BySequence<Complex> turned(const BySequence<Complex>& value, int clock) {
-  const Complex turn = std::polar(1.0, -kPi / 6 * clock);
-  return {value[kZero], value[kPositive] * turn, value[kNegative] * std::conj(turn)};
-}
-
 BySequence<Complex> times(const BySequence<Complex>& a, const BySequence<Complex>& b, double scale) {
   return {a[0] * b[0] * scale, a[1] * b[1] * scale, a[2] * b[2] * scale};
 }
@@ -139,16 +132,11 @@ void FaultSolver::solve(const Fault& fault, const FaultOptions& options, Workspa
       result.branch_currents.push_back(
           {share.element, share.bus, turned(current, model.lag_clock[at(share.bus)] - own_lag)});
   }
-  // Without a path to earth no zero-sequence current flows, yet the fault decides the potential: V_a = 0, or
-  // V_b = phase_ohm I_b.
   Complex shift_pu = 0;
   const bool earth_fault =
       fault.kind == FaultKind::line_to_ground || fault.kind == FaultKind::double_line_to_ground;
-  if (earth_fault && !z.z0) {
-    const Complex v1 = e_pu - z.z1 * i_pu[kPositive], v2 = -z.z2 * i_pu[kNegative];
-    const Complex drop = fault.phase_ohm / base_ohm * to_phases(i_pu)[1];
-    shift_pu = fault.kind == FaultKind::line_to_ground ? -(v1 + v2) : drop - std::conj(kA) * v1 - kA * v2;
-  }
+  if (earth_fault && !z.z0)
+    shift_pu = earth_fault_shift_pu(fault.kind, z, e_pu, i_pu, fault.phase_ohm / base_ohm);
   for (const detail::VoltageShare& share : workspace.reach.voltages) {
     const int lag = model.lag_clock[at(share.bus)] - own_lag;
     const double kv = model.nominal_kv[at(share.bus)] / std::sqrt(3.0);

@@ -168,7 +168,7 @@ std::optional<OutageChange> coupler_change(const SequenceModel& model, const Fau
 
 std::optional<OutageChange> outage_change(const Network& network, const SequenceModel& model,
                                           const FaultNetwork& solved, ElementRef ref,
-                                          std::span<const std::uint32_t> terminals) {
+                                          std::span<const std::uint32_t> terminals, bool earthed) {
   if (ref.kind == ElementKind::bus_switch) {
     const auto found = std::find_if(model.closed_switches.begin(), model.closed_switches.end(),
                                     [&](const MergedSwitch& s) { return s.element == ref; });
@@ -187,7 +187,7 @@ std::optional<OutageChange> outage_change(const Network& network, const Sequence
   builder.remove_block(model.blocks[slots[0].block]);
   if (slots[1].used)
     builder.remove_from_group(model.blocks[slots[1].block], slots[1].position,
-                              network.lines[ref.index].earthed_when_out.value_or(false));
+                              earthed || network.lines[ref.index].earthed_when_out.value_or(false));
   if (!builder.finish()) throw std::logic_error("an element's admittance has no diagonal entry");
   return change;
 }

@@ -38,9 +38,12 @@ struct OutageChange {
 
 /// @return empty when the element is not in the model (out of service, no fault current) or its outage
 /// changes nothing (a switch of a loop).
+/// @param earthed  a coupled line is earthed at both ends once it is out, as `earthed_when_out` says of
+/// itself
 [[nodiscard]] std::optional<OutageChange> outage_change(const Network& network, const SequenceModel& model,
                                                         const FaultNetwork& solved, ElementRef element,
-                                                        std::span<const std::uint32_t> terminals);
+                                                        std::span<const std::uint32_t> terminals,
+                                                        bool earthed = false);
 
 /// Terminals of each element, in the order of their buses.
 class TerminalTable {

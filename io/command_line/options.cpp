@@ -21,6 +21,7 @@ constexpr const char* kOverview =
     "  kiloamp sweep CASE            faults at every bus\n"
     "  kiloamp fault CASE --bus ID   faults at one bus, with currents and voltages around it\n"
     "  kiloamp outages CASE          largest and smallest current at every bus over all single outages\n"
+    "  kiloamp relays CASE           currents and voltages that each relay sees, over faults and states\n"
     "  kiloamp duty CASE             breakers, fuses and switchboards against what the network asks of "
     "them\n\n"
     "kiloamp VERB --help explains a verb. CASE is a case file, or - for standard input.\n"
@@ -338,8 +339,28 @@ Parsed parse(std::vector<std::string> arguments, std::ostream& out, std::ostream
                                       "--outages --strict");
   add_duty_options(*duty, c, t);
 
+  CLI::App* relays = app.add_subcommand("relays",
+                                        "What each relay measures: faults close-in, at remote buses, at the "
+                                        "line's end with the far breaker open and "
+                                        "beyond, in the\nintact network, with each neighbouring element out, "
+                                        "and at minimum sources.\nExample: kiloamp "
+                                        "relays plant.json --everywhere --format csv");
+  add_study_options(*relays, c, t);
+  relays
+      ->add_option("--fault", t.kinds,
+                   "kinds of fault, separated by commas: 3ph, lg, ll, llg. Default: all four")
+      ->type_name("KINDS")
+      ->check(into(read_kinds, c.study.kinds));
+  relays->add_flag("--everywhere", c.relays.everywhere,
+                   "every branch terminal instead of the relays of the case");
+  relays
+      ->add_option("--further", c.relays.further,
+                   "faults at buses up to N branches beyond the remote bus. Default: 1")
+      ->type_name("N")
+      ->check(CLI::Range(0, 100));
+
   // The nearest verb is worth more than the parser's own words for an unknown one.
-  static const std::vector<std::string_view> verbs{"check", "sweep", "fault", "outages", "duty"};
+  static const std::vector<std::string_view> verbs{"check", "sweep", "fault", "outages", "duty", "relays"};
   if (!arguments.empty() && arguments.front().rfind('-', 0) != 0 &&
       std::find(verbs.begin(), verbs.end(), arguments.front()) == verbs.end()) {
     err << "kiloamp: " << must_be(arguments.front(), verbs) << "\nkiloamp --help explains\n";

@@ -7,11 +7,12 @@
 
 #include "engine/study/duty.hpp"
 #include "engine/study/outages.hpp"
+#include "engine/study/relays.hpp"
 
 namespace kiloamp {
 
 struct Command {
-  std::string verb;  ///< check, sweep, fault, outages, duty
+  std::string verb;  ///< check, sweep, fault, outages, duty, relays
   std::string case_file;
   std::vector<std::string> buses;
   std::optional<std::string> scenario;
@@ -21,6 +22,7 @@ struct Command {
   std::optional<std::string> output;
   OutageOptions outages;  ///< of the verb outages; threads are those of the study
   DutyOptions duty;       ///< of the verb duty; study and scenario are those of the command
+  RelayOptions relays;    ///< of the verb relays; study is that of the command
   bool strict = false;    ///< duty: exit 3 unless every device is within or marginal
   bool contributions = false;
   bool both_kinds = false;  ///< study.case_kind is max; min is wanted too

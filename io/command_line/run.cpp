@@ -18,6 +18,7 @@
 #include "reports/duty_report.hpp"
 #include "reports/fault_report.hpp"
 #include "reports/outage_report.hpp"
+#include "reports/relay_report.hpp"
 
 namespace kiloamp {
 
@@ -170,6 +171,56 @@ int run_duty(const Command& c, const ReadResult& read, Stages& stages, std::ostr
   return c.strict && count(Verdict::over) + count(Verdict::not_evaluated) > 0 ? kDutyNotProven : kRan;
 }
 
+int run_relays(const Command& c, const ReadResult& read, Stages& stages, std::ostream& out,
+               std::ostream& err) {
+  RelayOptions options = c.relays;
+  options.study = c.study;
+  Output output(c.output, out);
+  const RelayStudy study(*read.network, options);
+  stages.next("solution");
+  const RelayReport report(study, facts_of(c, read),
+                           c.format == "csv"    ? RelayFormat::csv
+                           : c.format == "json" ? RelayFormat::json
+                                                : RelayFormat::text);
+  struct Thread {
+    std::shared_ptr<RelayStudy::Workspace> workspace;
+    std::vector<RelayRow> rows;
+    std::string text;
+  };
+  const int count = std::max(1, c.study.threads);
+  std::vector<Thread> threads(static_cast<std::size_t>(count));
+  for (Thread& thread : threads) thread.workspace = study.make_workspace();
+  const Sink sink = output.sink();
+  sink(report.begin());
+  constexpr std::size_t kLocationsInPiece = 8;
+  const std::size_t locations = study.locations().list.size();
+  const bool watched = ::isatty(STDERR_FILENO) != 0 && c.relays.everywhere;
+  std::size_t done = 0;
+  in_ordered_pieces(
+      locations, kLocationsInPiece, count,
+      [&](int t, std::size_t first, std::size_t last) {
+        Thread& own = threads[static_cast<std::size_t>(t)];
+        for (std::size_t l = first; l < last; ++l) {
+          study.at_location(l, *own.workspace, own.rows);
+          own.text += report.location(l, own.rows);
+        }
+      },
+      [&](int t) {
+        std::string& text = threads[static_cast<std::size_t>(t)].text;
+        sink(text);
+        text.clear();
+        done = std::min(locations, done + kLocationsInPiece);
+        if (watched)
+          err << "\rlocations: " << done << " of " << locations << (done == locations ? "\n" : "")
+              << std::flush;
+      });
+  sink(report.end());
+  output.commit();
+  stages.next("relays and writing");
+  if (c.timing) stages.print(err);
+  return kRan;
+}
+
 // Solves and writes on the studies' threads. With `timing`, returns the part of the wall time that the
 // formulas took: that of the threads' own time.
 double write_faults(const Studies& studies, FaultReport& report, bool timing) {
@@ -274,6 +325,7 @@ int run_command(Command c, std::ostream& out, std::ostream& err) {
   std::optional<Study> made, smallest;
   try {
     if (c.verb == "duty") return run_duty(c, read, stages, out, err);
+    if (c.verb == "relays") return run_relays(c, read, stages, out, err);
     if (c.both_kinds) {
       StudyOptions options = c.study;
       options.case_kind = CaseKind::min;

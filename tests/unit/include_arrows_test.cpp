@@ -15,8 +15,8 @@ namespace fs = std::filesystem;
 using Folders = std::set<std::string>;
 
 const std::map<std::string, Folders>& arrows() {
-  static const Folders engine{"engine/network", "engine/sequence", "engine/sparse", "engine/fault",
-                              "engine/phase",   "engine/standard", "engine/study"};
+  static const Folders engine{"engine/network", "engine/sequence", "engine/sparse",     "engine/fault",
+                              "engine/phase",   "engine/standard", "engine/protection", "engine/study"};
   static const auto with = [](Folders base, std::initializer_list<std::string> more) {
     base.insert(more);
     return base;
@@ -29,6 +29,8 @@ const std::map<std::string, Folders>& arrows() {
       {"engine/phase", {"engine/phase", "engine/network"}},
       {"engine/standard",
        {"engine/standard", "engine/network", "engine/sequence", "engine/fault", "engine/sparse"}},
+      {"engine/protection",
+       {"engine/protection", "engine/fault", "engine/sequence", "engine/sparse", "engine/network"}},
       {"engine/study", engine},
       {"reports", with(engine, {"reports"})},
       {"io/case_file", with(engine, {"io/case_file"})},
