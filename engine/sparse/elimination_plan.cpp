@@ -11,6 +11,11 @@
 namespace kiloamp::sparse {
 namespace {
 
+/// Narrow columns that are put in order of level together; their slots should stay in the cache.
+constexpr Index kSortedTogether = 1024;
+/// Narrow columns of a step at most: the worst pivot of each step is a suspect of its own.
+constexpr Index kStepColumns = 16;
+
 std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 
 class Planner {
@@ -20,10 +25,13 @@ class Planner {
     plan_.edges = edges.size();
     const PackedGraph& core = reduction_.core_graph;
     core_ = front_structure(core, minimum_degree_order(core));
-    number_columns();
+    form_blocks();
+    number_in_postorder(blocks_);
+    const std::vector<Index> task_of = partition_tasks(blocks_, plan_.tasks);
+    place_blocks(task_of);
+    number_rows();
     list_columns();
     connect_fronts();
-    const std::vector<Index> task_of = partition_tasks(blocks_, plan_.tasks);
     list_steps(task_of);
     write_programs(task_of);
     locate_edges(edges);
@@ -35,9 +43,8 @@ class Planner {
  private:
   Index narrow() const { return static_cast<Index>(reduction_.sequence.size()); }
 
-  /// Blocks of columns: the narrow columns in order of elimination, then the fronts. Numbers them in
-  /// postorder.
-  void number_columns() {
+  /// Blocks of columns: the narrow columns in order of elimination, then the fronts.
+  void form_blocks() {
     const Index narrow_count = narrow();
     std::vector<Index> block_of(at(plan_.order));  // of a row; for core rows: narrow + front
     std::vector<Index> rank(at(plan_.order));
@@ -63,16 +70,78 @@ class Planner {
       const Index updated = core_.row_begin[at(f) + 1] - core_.row_begin[at(f)];
       blocks_[at(narrow_count + f)] = {parent < 0 ? -1 : narrow_count + parent, pivots, 0, updated};
     }
-    number_in_postorder(blocks_);
+  }
+
+  /// Moves the blocks from postorder to their final positions: task by task, the top last, in each the narrow
+  /// columns first.
+  void place_blocks(const std::vector<Index>& task_of) {
+    std::vector<Index> in_postorder(at(plan_.order), -1);
+    for (std::size_t b = 0; b < blocks_.size(); ++b)
+      in_postorder[at(blocks_[b].first)] = static_cast<Index>(b);
+    const auto part_of = [&](Index b) {
+      const Index task = task_of[at(b)] < 0 ? plan_.tasks : task_of[at(b)];
+      return 2 * at(task) + (b < narrow() ? 0 : 1);
+    };
+    std::vector<Index> begin(2 * at(plan_.tasks) + 3, 0);
+    for (Index b = 0; b < static_cast<Index>(blocks_.size()); ++b)
+      begin[part_of(b) + 1] += blocks_[at(b)].columns;
+    for (std::size_t part = 1; part < begin.size(); ++part) begin[part] += begin[part - 1];
+    std::vector<Index> next = begin;
+    std::vector<Index> narrow_at(at(plan_.order));
+    for (const Index b : in_postorder) {
+      if (b < 0) continue;
+      Index& position = next[part_of(b)];
+      blocks_[at(b)].first = position;
+      if (b < narrow()) narrow_at[at(position)] = b;
+      position += blocks_[at(b)].columns;
+    }
+    for (std::size_t part = 0; part + 1 < begin.size(); part += 2) {
+      for (Index from = begin[part]; from < begin[part + 1]; from += kSortedTogether) {
+        const Index count = std::min(kSortedTogether, begin[part + 1] - from);
+        sort_by_level(std::span(narrow_at).subspan(at(from), at(count)), from);
+      }
+    }
+  }
+
+  Index narrow_entries(Index b) const {
+    Index entries = 0;
+    for (const Index other : reduction_.neighbours[at(b)]) entries += other >= 0 ? 1 : 0;
+    return entries;
+  }
+
+  /// Orders narrow columns, the first at position `first`, by their height in the tree among themselves, then
+  /// by length. A column then seldom waits for the one before it, and its length is easily guessed.
+  void sort_by_level(std::span<const Index> columns, Index first) {
+    constexpr Index kLengths = kLargestReducedDegree + 1;
+    const auto end = first + static_cast<Index>(columns.size());
+    std::vector<Index> key(columns.size(), 0);
+    for (std::size_t k = 0; k < columns.size(); ++k) {
+      const Index parent = blocks_[at(columns[k])].parent;
+      if (parent >= 0 && parent < narrow() && blocks_[at(parent)].first < end) {
+        Index& level = key[at(blocks_[at(parent)].first - first)];
+        level = std::max(level, key[k] + 1);
+      }
+    }
+    std::vector<Index> begin(at(kLengths) * columns.size() + 1, 0);
+    for (std::size_t k = 0; k < columns.size(); ++k) {
+      key[k] = kLengths * key[k] + narrow_entries(columns[k]);
+      ++begin[at(key[k]) + 1];
+    }
+    for (std::size_t k = 1; k < begin.size(); ++k) begin[k] += begin[k - 1];
+    for (std::size_t k = 0; k < columns.size(); ++k)
+      blocks_[at(columns[k])].first = first + begin[at(key[k])]++;
+  }
+
+  void number_rows() {
     plan_.position_of.resize(at(plan_.order));
     plan_.row_of.resize(at(plan_.order));
     const auto number = [&](Index row, Index position) {
       plan_.position_of[at(row)] = position;
       plan_.row_of[at(position)] = row;
     };
-    for (Index b = 0; b < narrow_count; ++b) number(reduction_.sequence[at(b)], blocks_[at(b)].first);
+    for (Index b = 0; b < narrow(); ++b) number(reduction_.sequence[at(b)], blocks_[at(b)].first);
     for (Index f = 0; f < core_.fronts(); ++f) {
-      Index position = blocks_[at(narrow_count + f)].first;
+      Index position = blocks_[at(narrow() + f)].first;
       for (Index p = core_.pivot_begin[at(f)]; p < core_.pivot_begin[at(f) + 1]; ++p) {
         number(reduction_.core[at(core_.pivots[at(p)])], position++);
       }
@@ -85,9 +154,7 @@ class Planner {
     std::vector<std::int64_t> length(at(plan_.order));
     std::int64_t total = 0;
     for (Index b = 0; b < narrow_count; ++b) {
-      std::int64_t entries = 1;
-      for (const Index other : reduction_.neighbours[at(b)]) entries += other >= 0 ? 1 : 0;
-      length[at(blocks_[at(b)].first)] = entries;
+      length[at(blocks_[at(b)].first)] = narrow_entries(b) + 1;
     }
     for (std::size_t b = at(narrow_count); b < blocks_.size(); ++b) {
       for (Index p = 0; p < blocks_[b].columns; ++p) {
@@ -175,7 +242,7 @@ class Planner {
       const Index front = b < narrow_count ? -1 : b - narrow_count;
       if (front >= 0) plan_.fronts[at(front)].task = task_of[at(b)];
       if (front < 0 && !plan_.steps.empty() && plan_.steps.back().front < 0 &&
-          owner.back() == task_of[at(b)]) {
+          owner.back() == task_of[at(b)] && plan_.steps.back().columns < kStepColumns) {
         ++plan_.steps.back().columns;
       } else {
         plan_.steps.push_back({position, blocks_[at(b)].columns, front, 0, 0});

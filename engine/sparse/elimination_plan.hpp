@@ -19,13 +19,16 @@ namespace kiloamp::sparse {
 /// (b,b) (a,c) (b,c) (c,c), as many as there are. All other columns belong to fronts: dense lower triangles
 /// whose rows fall in position, pivots last.
 ///
+/// The positions of a task follow one another, narrow columns first. Those stand level by level: columns that
+/// do not wait for each other, and of equal length, side by side.
+///
 /// Tasks are disjoint unions of subtrees; what they update outside themselves goes to their own overflow
 /// slots (numbered after the ordinary ones) and is added to overflow_target[] afterwards, task by task. The
 /// partition depends on the pattern alone, so results do not depend on the number of threads.
 struct EliminationPlan {
   struct Step {
     Index first;         // position of the first column
-    Index columns;       // consecutive columns
+    Index columns;       // consecutive columns, few where they are narrow
     Index front;         // the front they form, -1: narrow columns
     Index target_begin;  // narrow: where their program starts in `targets`
     Index targets;       // narrow: its length
