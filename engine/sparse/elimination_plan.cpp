@@ -306,7 +306,7 @@ class Planner {
   }
 
   void locate_edges(std::span<const Edge> edges) {
-    plan_.source.assign(at(plan_.slots()), EliminationPlan::kFill);
+    plan_.source.assign(at(plan_.slots()), -1);
     plan_.edge_slot.resize(edges.size());
     for (std::size_t e = 0; e < edges.size(); ++e) {
       const auto [a, b] = std::minmax(plan_.position_of[at(edges[e].i)], plan_.position_of[at(edges[e].j)]);
@@ -317,7 +317,12 @@ class Planner {
     for (Index row = 0; row < plan_.order; ++row) {
       const Index slot = plan_.diagonal_slot(plan_.position_of[at(row)]);
       plan_.row_slot[at(row)] = slot;
-      plan_.source[at(slot)] = EliminationPlan::source_of_row(row);
+    }
+    plan_.fill_slots.reserve(at(plan_.slots() - plan_.order) - edges.size());
+    for (Index p = 0; p < plan_.order; ++p) {
+      for (Index slot = plan_.column_begin[at(p)]; slot < plan_.diagonal_slot(p); ++slot) {
+        if (plan_.source[at(slot)] < 0) plan_.fill_slots.push_back(slot);
+      }
     }
   }
 

@@ -48,13 +48,10 @@ struct EliminationPlan {
   std::vector<Index> row_of;       // position -> row
   std::vector<Index> column_begin{0};
   std::vector<Index> rows;
-  std::vector<Index> source;     // slot -> edge whose value starts there, kFill, or see source_of_row
-  std::vector<Index> edge_slot;  // edge -> slot
-  std::vector<Index> row_slot;   // row -> slot of its diagonal
-
-  static constexpr Index kFill = -1;
-  /// Source of the diagonal slot of a row.
-  static constexpr Index source_of_row(Index row) { return -2 - row; }
+  std::vector<Index> source;      // slot -> edge whose value starts there, -1: none
+  std::vector<Index> edge_slot;   // edge -> slot
+  std::vector<Index> row_slot;    // row -> slot of its diagonal
+  std::vector<Index> fill_slots;  // slots where A has no entry, rising
 
   std::vector<Step> steps;
   std::vector<Index> targets;
