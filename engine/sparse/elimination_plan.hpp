@@ -1,6 +1,7 @@
 // Everything that elimination needs to know about a pattern: order, places of L, programs, fronts, tasks.
 #pragma once
 #include <cstddef>
+#include <ranges>
 #include <span>
 #include <vector>
 
@@ -48,10 +49,10 @@ struct EliminationPlan {
   std::vector<Index> row_of;       // position -> row
   std::vector<Index> column_begin{0};
   std::vector<Index> rows;
-  std::vector<Index> source;      // slot -> edge whose value starts there, -1: none
-  std::vector<Index> edge_slot;   // edge -> slot
-  std::vector<Index> row_slot;    // row -> slot of its diagonal
-  std::vector<Index> fill_slots;  // slots where A has no entry, rising
+  std::vector<Index> edge_column;  // edge -> position of the column that holds it
+  std::vector<Index> edge_slot;    // edge -> slot
+  std::vector<Index> row_slot;     // row -> slot of its diagonal
+  std::vector<Index> fill_slots;   // slots where A has no entry, rising
 
   std::vector<Step> steps;
   std::vector<Index> targets;
@@ -63,7 +64,6 @@ struct EliminationPlan {
   /// steps_of(t): ids of the steps of task t in elimination order; t = tasks is the serial top.
   Index tasks = 0;
   std::vector<Index> task_step_begin;
-  std::vector<Index> task_steps;
   std::vector<Index> overflow_begin{0};  // per task
   std::vector<Index> overflow_target;
 
@@ -98,10 +98,9 @@ struct EliminationPlan {
   }
   /// Slot of the place (a, b), a < b, which must be in the structure of L.
   [[nodiscard]] Index find_slot(Index a, Index b) const;
-  [[nodiscard]] std::span<const Index> steps_of(Index task) const {
-    const auto from = static_cast<std::size_t>(task_step_begin[static_cast<std::size_t>(task)]);
-    const auto to = static_cast<std::size_t>(task_step_begin[static_cast<std::size_t>(task) + 1]);
-    return std::span<const Index>(task_steps).subspan(from, to - from);
+  [[nodiscard]] auto steps_of(Index task) const {
+    return std::views::iota(task_step_begin[static_cast<std::size_t>(task)],
+                            task_step_begin[static_cast<std::size_t>(task) + 1]);
   }
 };
 
