@@ -11,8 +11,8 @@ namespace {
 
 /// Pivots of a front eliminated in one pass over its other rows.
 constexpr Index kPivotBlock = 4;
-/// Entries of the input fetched in advance of their use, which jumps about in memory.
-constexpr Index kAhead = 32;
+/// Slots fetched in advance of their use, which jumps about in memory.
+constexpr std::size_t kAhead = 32;
 /// Keeps the mark of a zero pivot infinite where the whole row is zero (0 / 0 otherwise).
 constexpr double kTinySquared = std::numeric_limits<double>::min();
 
@@ -38,6 +38,49 @@ class Eliminator {
         front_(worker.front),
         stack_(worker.stack) {}
 
+  /// Puts share `share` of `shares` of A in its slots and notes the largest entry. In the caller's order: to
+  /// write here and there does not keep the machine waiting, to read here and there does.
+  void place_input(Index share, Index shares) {
+    auto& largest = factors_.largest_input_squared[at(share)];
+    largest = {};
+    const auto begin = [&](std::size_t count) { return count * at(share) / at(shares); };
+    const auto end = [&](std::size_t count) { return count * at(share + 1) / at(shares); };
+    const auto place = [&](const auto& entries, const std::vector<Index>& slot_of, double padding) {
+      // Several sums and maxima side by side: each would wait for itself.
+      constexpr std::size_t kApart = 4;
+      Size met[kApart] = {};
+      Size sum[kApart] = {};
+      const auto include = [&](std::size_t k, std::size_t apart) {
+        Entry entry;
+        to_pack<Scalar, Lanes>(entry, entries[k], padding);
+        factors_.slots[at(slot_of[k])] = entry;
+        Size size;
+        square_size(size, entry);
+        keep_larger<kWidth>(met[apart], size);
+        sum[apart] += size;
+      };
+      std::size_t k = begin(entries.size());
+      for (; k + kAhead + kApart <= end(entries.size()); k += kApart) {
+        for (std::size_t apart = 0; apart < kApart; ++apart) {
+          __builtin_prefetch(&factors_.slots[at(slot_of[k + kAhead + apart])], 1);
+          include(k + apart, apart);
+        }
+      }
+      for (; k < end(entries.size()); ++k) include(k, 0);
+      for (std::size_t apart = 0; apart < kApart; ++apart) {
+        for (int lane = 0; lane < Lanes; ++lane) {
+          const double total = get_lane<kWidth>(sum[apart], lane);
+          largest[at(lane)] =
+              std::max(largest[at(lane)], get_lane<kWidth>(met[apart], lane)) + (total - total);
+        }
+      }
+    };
+    place(values_.diagonal, plan_.row_slot, 1);
+    place(values_.off_diagonal, plan_.edge_slot, 0);
+    for (std::size_t k = begin(plan_.fill_slots.size()); k < end(plan_.fill_slots.size()); ++k)
+      clear(factors_.slots[at(plan_.fill_slots[k])]);
+  }
+
   void run(Index task) {
     watch_ = {};
     grown_ = Size{};
@@ -45,8 +88,11 @@ class Eliminator {
     if (stack_.size() < factors_.layout.update_stack[at(task)]) {
       stack_.resize(factors_.layout.update_stack[at(task)]);
     }
-    scan_input(task);
-    for (const Index s : plan_.steps_of(task)) assemble(plan_.steps[at(s)]);
+    for (const Index s : plan_.steps_of(task)) {
+      const auto& step = plan_.steps[at(s)];
+      for (Index p = step.first; p < step.first + step.columns; ++p)
+        square_size(factors_.diagonal_squared[at(p)], factors_.slots[at(plan_.diagonal_slot(p))]);
+    }
     if (task < plan_.tasks) {
       for (Index k = plan_.overflow_begin[at(task)]; k < plan_.overflow_begin[at(task) + 1]; ++k) {
         clear(factors_.slots[at(plan_.slots() + k)]);
@@ -78,72 +124,6 @@ class Eliminator {
   }
 
  private:
-  /// Watches the task's share of the entries of A (the top's where there are no tasks), in the caller's
-  /// order: one after the other in memory, which also brings them near for assemble().
-  void scan_input(Index task) {
-    if (task > 0 && task == plan_.tasks) return;
-    const Index shares = std::max<Index>(plan_.tasks, 1);
-    const auto scan = [&](const std::vector<std::array<Scalar, static_cast<std::size_t>(Lanes)>>& entries) {
-      const auto share = [&](Index t) { return entries.size() * at(t) / at(shares); };
-      // Several sums and maxima side by side: each would wait for itself.
-      constexpr std::size_t kApart = 4;
-      Size largest[kApart] = {};
-      Size sum[kApart] = {};
-      const auto include = [&](std::size_t k, std::size_t place) {
-        Entry entry;
-        to_pack<Scalar, Lanes>(entry, entries[k], 0);
-        Size size;
-        square_size(size, entry);
-        keep_larger<kWidth>(largest[place], size);
-        sum[place] += size;
-      };
-      std::size_t k = share(task);
-      const std::size_t end = share(task + 1);
-      for (; k + kApart <= end; k += kApart) {
-        for (std::size_t place = 0; place < kApart; ++place) include(k + place, place);
-      }
-      for (; k < end; ++k) include(k, 0);
-      for (std::size_t place = 0; place < kApart; ++place) {
-        for (int lane = 0; lane < kWidth; ++lane) {
-          double& kept = watch_.largest_input_squared[at(lane)];
-          const double total = get_lane<kWidth>(sum[place], lane);
-          kept = std::max(kept, get_lane<kWidth>(largest[place], lane)) + (total - total);
-        }
-      }
-    };
-    scan(values_.diagonal);
-    scan(values_.off_diagonal);
-  }
-
-  void assemble(const EliminationPlan::Step& step) {
-    // Where a slot's value comes from looks random to the machine: it is looked up, a jump would be guessed.
-    struct Origin {
-      const std::array<Scalar, static_cast<std::size_t>(Lanes)>* from;
-      double padding;
-    };
-    const std::array<Scalar, static_cast<std::size_t>(Lanes)> none{};
-    const Origin origins[3] = {{values_.diagonal.data(), 1}, {&none, 0}, {values_.off_diagonal.data(), 0}};
-    const auto origin_of = [&](Index slot, double& padding) {
-      const Index source = plan_.source[at(slot)];
-      const int is_row = source < EliminationPlan::kFill;
-      const int is_edge = source > EliminationPlan::kFill;
-      const Origin& origin = origins[1 + is_edge - is_row];
-      padding = origin.padding;
-      return origin.from + (source * (is_edge - is_row) - 2 * is_row);
-    };
-    const Index end = plan_.column_begin[at(step.first + step.columns)];
-    const Index last = plan_.slots() - 1;
-    for (Index slot = plan_.column_begin[at(step.first)]; slot < end; ++slot) {
-      double padding;
-      __builtin_prefetch(origin_of(std::min(slot + kAhead, last), padding));
-      const auto* const from = origin_of(slot, padding);
-      to_pack<Scalar, Lanes>(factors_.slots[at(slot)], *from, padding);
-    }
-    for (Index p = step.first; p < step.first + step.columns; ++p) {
-      square_size(factors_.diagonal_squared[at(p)], factors_.slots[at(plan_.diagonal_slot(p))]);
-    }
-  }
-
   /// Marks pivot p, |p|^2 = `pivot_size`, whose row has the largest |entry|^2 `size` beside the diagonal.
   void watch(Index p, Size size, const Size& pivot_size, const Size& inverse_size) {
     const Size& before = factors_.diagonal_squared[at(p)];
@@ -341,6 +321,8 @@ void eliminate(LaneFactors<Scalar, padded_width(Lanes)>& factors, EliminationWor
   if (workspace.workers.size() < count) workspace.workers.resize(count);
   std::vector<Worker> workers;
   for (auto& worker : workspace.workers) workers.emplace_back(factors, values, workspace, worker);
+  const auto shares = static_cast<Index>(factors.largest_input_squared.size());
+  run_tasks(shares, threads, [&](int share, int worker) { workers[at(worker)].place_input(share, shares); });
   run_tasks(tasks, threads, [&](int task, int worker) { workers[at(worker)].run(task); });
   workers[0].run(tasks);
 }

@@ -4,12 +4,21 @@
 #include <functional>
 #include <limits>
 #include <stdexcept>
+#include <unordered_map>
 
 #include "engine/sparse/front_structure.hpp"
 #include "engine/sparse/task_partition.hpp"
 
 namespace kiloamp::sparse {
 namespace {
+
+/// Narrow columns that are put in order of level together; their slots should stay in the cache.
+constexpr Index kSortedTogether = 1024;
+/// Narrow columns of a step at most: the worst pivot of each step is a suspect of its own.
+constexpr Index kStepColumns = 16;
+
+/// Columns and edges fetched in advance of their use, which jumps about in memory.
+constexpr std::size_t kAhead = 32;
 
 std::size_t at(Index i) { return static_cast<std::size_t>(i); }
 
@@ -20,12 +29,15 @@ class Planner {
     plan_.edges = edges.size();
     const PackedGraph& core = reduction_.core_graph;
     core_ = front_structure(core, minimum_degree_order(core));
-    number_columns();
+    form_blocks();
+    number_in_postorder(blocks_);
+    const std::vector<Index> task_of = partition_tasks(blocks_, plan_.tasks);
+    place_blocks(task_of);
+    number_rows();
     list_columns();
     connect_fronts();
-    const std::vector<Index> task_of = partition_tasks(blocks_, plan_.tasks);
-    list_steps(task_of);
-    write_programs(task_of);
+    list_steps();
+    write_programs();
     locate_edges(edges);
     choose_spot(edges);
   }
@@ -35,27 +47,20 @@ class Planner {
  private:
   Index narrow() const { return static_cast<Index>(reduction_.sequence.size()); }
 
-  /// Blocks of columns: the narrow columns in order of elimination, then the fronts. Numbers them in
-  /// postorder.
-  void number_columns() {
+  /// Blocks of columns: the narrow columns in order of elimination, then the fronts.
+  void form_blocks() {
     const Index narrow_count = narrow();
-    std::vector<Index> block_of(at(plan_.order));  // of a row; for core rows: narrow + front
-    std::vector<Index> rank(at(plan_.order));
-    for (Index b = 0; b < narrow_count; ++b) {
-      block_of[at(reduction_.sequence[at(b)])] = b;
-      rank[at(reduction_.sequence[at(b)])] = b;
-    }
-    for (std::size_t v = 0; v < reduction_.core.size(); ++v) {
-      block_of[at(reduction_.core[v])] = narrow_count + core_.front_of[v];
-      rank[at(reduction_.core[v])] = narrow_count + core_.rank[v];
-    }
     blocks_.resize(at(narrow_count + core_.fronts()));
+    const auto rank = [&](Index vertex) {
+      return vertex < narrow_count ? vertex : narrow_count + core_.rank[at(vertex - narrow_count)];
+    };
     for (Index b = 0; b < narrow_count; ++b) {
-      Index first = -1;
+      Index parent = -1;  // the vertex, then the block eliminated first
       for (const Index other : reduction_.neighbours[at(b)]) {
-        if (other >= 0 && (first < 0 || rank[at(other)] < rank[at(first)])) first = other;
+        if (other >= 0 && (parent < 0 || rank(other) < rank(parent))) parent = other;
       }
-      blocks_[at(b)] = {first < 0 ? -1 : block_of[at(first)], 1, 0, -1};
+      if (parent >= narrow_count) parent = narrow_count + core_.front_of[at(parent - narrow_count)];
+      blocks_[at(b)] = {parent, 1, 0, -1};
     }
     for (Index f = 0; f < core_.fronts(); ++f) {
       const Index parent = core_.parent[at(f)];
@@ -63,71 +68,143 @@ class Planner {
       const Index updated = core_.row_begin[at(f) + 1] - core_.row_begin[at(f)];
       blocks_[at(narrow_count + f)] = {parent < 0 ? -1 : narrow_count + parent, pivots, 0, updated};
     }
-    number_in_postorder(blocks_);
+  }
+
+  /// Moves the blocks from postorder to their final positions: task by task, the top last, in each the narrow
+  /// columns first.
+  void place_blocks(const std::vector<Index>& task_of) {
+    std::vector<Index> in_postorder(at(plan_.order), -1);
+    for (std::size_t b = 0; b < blocks_.size(); ++b)
+      in_postorder[at(blocks_[b].first)] = static_cast<Index>(b);
+    const auto part_of = [&](Index b) {
+      const Index task = task_of[at(b)] < 0 ? plan_.tasks : task_of[at(b)];
+      return 2 * at(task) + (b < narrow() ? 0 : 1);
+    };
+    part_begin_.assign(2 * at(plan_.tasks) + 3, 0);
+    for (Index b = 0; b < static_cast<Index>(blocks_.size()); ++b)
+      part_begin_[part_of(b) + 1] += blocks_[at(b)].columns;
+    for (std::size_t part = 1; part < part_begin_.size(); ++part) part_begin_[part] += part_begin_[part - 1];
+    std::vector<Index> next = part_begin_;
+    block_at_.assign(at(plan_.order), -1);
+    for (const Index b : in_postorder) {
+      if (b < 0) continue;
+      Index& position = next[part_of(b)];
+      blocks_[at(b)].first = position;
+      block_at_[at(position)] = b;
+      position += blocks_[at(b)].columns;
+    }
+    for (std::size_t part = 0; part + 1 < part_begin_.size(); part += 2) {
+      for (Index from = part_begin_[part]; from < part_begin_[part + 1]; from += kSortedTogether) {
+        const Index count = std::min(kSortedTogether, part_begin_[part + 1] - from);
+        sort_by_level(std::span(block_at_).subspan(at(from), at(count)), from);
+      }
+    }
+  }
+
+  Index narrow_entries(Index b) const {
+    Index entries = 0;
+    for (const Index other : reduction_.neighbours[at(b)]) entries += other >= 0 ? 1 : 0;
+    return entries;
+  }
+
+  /// Orders narrow columns, the first at position `first`, by their height in the tree among themselves, then
+  /// by length. A column then seldom waits for the one before it, and its length is easily guessed.
+  void sort_by_level(std::span<Index> columns, Index first) {
+    constexpr Index kLengths = kLargestReducedDegree + 1;
+    const auto end = first + static_cast<Index>(columns.size());
+    std::vector<Index> key(columns.size(), 0);
+    for (std::size_t k = 0; k < columns.size(); ++k) {
+      const Index parent = blocks_[at(columns[k])].parent;
+      if (parent >= 0 && parent < narrow() && blocks_[at(parent)].first < end) {
+        Index& level = key[at(blocks_[at(parent)].first - first)];
+        level = std::max(level, key[k] + 1);
+      }
+    }
+    std::vector<Index> begin(at(kLengths) * columns.size() + 1, 0);
+    for (std::size_t k = 0; k < columns.size(); ++k) {
+      key[k] = kLengths * key[k] + narrow_entries(columns[k]);
+      ++begin[at(key[k]) + 1];
+    }
+    for (std::size_t k = 1; k < begin.size(); ++k) begin[k] += begin[k - 1];
+    const std::vector<Index> unsorted(columns.begin(), columns.end());
+    for (std::size_t k = 0; k < unsorted.size(); ++k) {
+      const Index place = begin[at(key[k])]++;
+      blocks_[at(unsorted[k])].first = first + place;
+      columns[at(place)] = unsorted[k];
+    }
+  }
+
+  /// Positions of vertices and rows.
+  void number_rows() {
+    position_of_.resize(at(plan_.order));
     plan_.position_of.resize(at(plan_.order));
     plan_.row_of.resize(at(plan_.order));
-    const auto number = [&](Index row, Index position) {
+    const auto number = [&](Index vertex, Index row, Index position) {
+      position_of_[at(vertex)] = position;
       plan_.position_of[at(row)] = position;
       plan_.row_of[at(position)] = row;
     };
-    for (Index b = 0; b < narrow_count; ++b) number(reduction_.sequence[at(b)], blocks_[at(b)].first);
+    for (Index b = 0; b < narrow(); ++b) number(b, reduction_.sequence[at(b)], blocks_[at(b)].first);
     for (Index f = 0; f < core_.fronts(); ++f) {
-      Index position = blocks_[at(narrow_count + f)].first;
+      Index position = blocks_[at(narrow() + f)].first;
       for (Index p = core_.pivot_begin[at(f)]; p < core_.pivot_begin[at(f) + 1]; ++p) {
-        number(reduction_.core[at(core_.pivots[at(p)])], position++);
+        const Index v = core_.pivots[at(p)];
+        number(narrow() + v, reduction_.core[at(v)], position++);
       }
     }
   }
 
   /// column_begin and rows.
   void list_columns() {
-    const Index narrow_count = narrow();
-    std::vector<std::int64_t> length(at(plan_.order));
     std::int64_t total = 0;
-    for (Index b = 0; b < narrow_count; ++b) {
-      std::int64_t entries = 1;
-      for (const Index other : reduction_.neighbours[at(b)]) entries += other >= 0 ? 1 : 0;
-      length[at(blocks_[at(b)].first)] = entries;
+    for (Index b = 0; b < static_cast<Index>(blocks_.size()); ++b) {
+      const std::int64_t columns = blocks_[at(b)].columns;
+      const std::int64_t updated = b < narrow() ? narrow_entries(b) : blocks_[at(b)].updated;
+      total += columns * updated + columns * (columns + 1) / 2;
     }
-    for (std::size_t b = at(narrow_count); b < blocks_.size(); ++b) {
-      for (Index p = 0; p < blocks_[b].columns; ++p) {
-        length[at(blocks_[b].first + p)] = blocks_[b].updated + blocks_[b].columns - p;
+    if (total > std::numeric_limits<Index>::max())
+      throw std::length_error("sparse factor exceeds 2^31 entries");
+    plan_.column_begin.reserve(at(plan_.order) + 1);
+    const auto fetch = [&](Index position) {
+      if (at(position) + kAhead >= block_at_.size()) return;
+      const Index later = block_at_[at(position) + kAhead];
+      const Index soon = block_at_[at(position) + kAhead / 2];
+      if (later >= 0 && later < narrow()) __builtin_prefetch(&reduction_.neighbours[at(later)]);
+      if (soon < 0 || soon >= narrow()) return;
+      for (const Index other : reduction_.neighbours[at(soon)]) {
+        if (other >= 0) __builtin_prefetch(&position_of_[at(other)]);
       }
-    }
-    plan_.column_begin.reserve(length.size() + 1);
-    for (const std::int64_t entries : length) {
-      total += entries;
-      if (total > std::numeric_limits<Index>::max())
-        throw std::length_error("sparse factor exceeds 2^31 entries");
-      plan_.column_begin.push_back(static_cast<Index>(total));
-    }
-    plan_.rows.resize(at(plan_.slots()));
-    for (Index b = 0; b < narrow_count; ++b) {
-      const Index position = blocks_[at(b)].first;
-      const Index from = plan_.column_begin[at(position)];
-      Index to = from;
-      for (const Index other : reduction_.neighbours[at(b)]) {
-        if (other < 0) continue;
-        Index slot = to++;
-        const Index place = plan_.position_of[at(other)];
-        for (; slot > from && plan_.rows[at(slot) - 1] < place; --slot)
-          plan_.rows[at(slot)] = plan_.rows[at(slot) - 1];
-        plan_.rows[at(slot)] = place;
+    };
+    plan_.rows.resize(static_cast<std::size_t>(total));
+    Index* to = plan_.rows.data();
+    const auto end_column = [&] { plan_.column_begin.push_back(static_cast<Index>(to - plan_.rows.data())); };
+    for (Index position = 0; position < plan_.order;
+         position += blocks_[at(block_at_[at(position)])].columns) {
+      const Index b = block_at_[at(position)];
+      Index* const from = to;
+      if (b < narrow()) {
+        fetch(position);
+        for (const Index other : reduction_.neighbours[at(b)]) {
+          if (other < 0) continue;
+          const Index row = position_of_[at(other)];
+          Index* place = to++;
+          for (; place > from && place[-1] < row; --place) *place = place[-1];
+          *place = row;
+        }
+        *to++ = position;
+        end_column();
+        continue;
       }
-      plan_.rows[at(to)] = position;
-    }
-    std::vector<Index> falling;
-    for (Index f = 0; f < core_.fronts(); ++f) {
-      falling.clear();
-      for (Index r = core_.row_begin[at(f)]; r < core_.row_begin[at(f) + 1]; ++r) {
-        falling.push_back(plan_.position_of[at(reduction_.core[at(core_.rows[at(r)])])]);
-      }
-      std::sort(falling.begin(), falling.end(), std::greater<>());
-      const auto& block = blocks_[at(narrow_count + f)];
-      for (Index p = block.columns - 1; p >= 0; --p) {
-        falling.push_back(block.first + p);
-        std::copy(falling.begin(), falling.end(),
-                  plan_.rows.begin() + plan_.column_begin[at(block.first + p)]);
+      const Index f = b - narrow();
+      for (Index r = core_.row_begin[at(f)]; r < core_.row_begin[at(f) + 1]; ++r)
+        *to++ = position_of_[at(narrow() + core_.rows[at(r)])];
+      std::sort(from, to, std::greater<>());
+      for (Index p = blocks_[at(b)].columns; p-- > 0;) *to++ = position + p;
+      end_column();
+      // The next columns have one row less each.
+      for (Index length = static_cast<Index>(to - from) - 1; length > blocks_[at(b)].updated; --length) {
+        to = std::copy_n(from, length, to);
+        end_column();
       }
     }
   }
@@ -164,58 +241,36 @@ class Planner {
     }
   }
 
-  /// Steps in order of position, a new one at each front and at each change of task.
-  void list_steps(const std::vector<Index>& task_of) {
-    const Index narrow_count = narrow();
-    std::vector<Index> block_at(at(plan_.order), -1);
-    for (std::size_t b = 0; b < blocks_.size(); ++b) block_at[at(blocks_[b].first)] = static_cast<Index>(b);
-    std::vector<Index> owner;
-    for (Index position = 0; position < plan_.order;) {
-      const Index b = block_at[at(position)];
-      const Index front = b < narrow_count ? -1 : b - narrow_count;
-      if (front >= 0) plan_.fronts[at(front)].task = task_of[at(b)];
-      if (front < 0 && !plan_.steps.empty() && plan_.steps.back().front < 0 &&
-          owner.back() == task_of[at(b)]) {
-        ++plan_.steps.back().columns;
-      } else {
-        plan_.steps.push_back({position, blocks_[at(b)].columns, front, 0, 0});
-        owner.push_back(task_of[at(b)]);
+  /// Steps of the tasks, the top last: a few narrow columns each, then the fronts.
+  void list_steps() {
+    plan_.task_step_begin.push_back(0);
+    for (Index task = 0; task <= plan_.tasks; ++task) {
+      const Index fronts = part_begin_[2 * at(task) + 1];
+      const Index end = part_begin_[2 * at(task) + 2];
+      for (Index position = part_begin_[2 * at(task)]; position < fronts; position += kStepColumns)
+        plan_.steps.push_back({position, std::min(kStepColumns, fronts - position), -1, 0, 0});
+      for (Index position = fronts; position < end; position += plan_.steps.back().columns) {
+        const Index b = block_at_[at(position)];
+        plan_.fronts[at(b - narrow())].task = task < plan_.tasks ? task : -1;
+        plan_.steps.push_back({position, blocks_[at(b)].columns, b - narrow(), 0, 0});
       }
-      position += blocks_[at(b)].columns;
-    }
-    for (Index& task : owner) task = task < 0 ? plan_.tasks : task;
-    plan_.task_step_begin.assign(at(plan_.tasks) + 2, 0);
-    for (const Index task : owner) ++plan_.task_step_begin[at(task) + 1];
-    for (std::size_t t = 0; t <= at(plan_.tasks); ++t)
-      plan_.task_step_begin[t + 1] += plan_.task_step_begin[t];
-    std::vector<Index> next(plan_.task_step_begin.begin(), plan_.task_step_begin.end() - 1);
-    plan_.task_steps.resize(owner.size());
-    for (std::size_t s = 0; s < owner.size(); ++s) {
-      plan_.task_steps[at(next[at(owner[s])]++)] = static_cast<Index>(s);
+      plan_.task_step_begin.push_back(static_cast<Index>(plan_.steps.size()));
     }
   }
 
   /// `targets` of the narrow columns, with the overflow slots of tasks.
-  void write_programs(const std::vector<Index>& task_of) {
-    std::vector<Index> task_at;
-    std::vector<Index> overflow_of;
-    if (plan_.tasks > 0) {
-      task_at.resize(at(plan_.order));
-      overflow_of.assign(at(plan_.slots()), -1);
-      for (std::size_t b = 0; b < blocks_.size(); ++b) {
-        for (Index p = 0; p < blocks_[b].columns; ++p) task_at[at(blocks_[b].first + p)] = task_of[b];
-      }
-    }
+  void write_programs() {
+    Index task_end = 0;  // position behind the task's columns
+    std::unordered_map<Index, Index> overflow_of;
     for (Index task = 0; task <= plan_.tasks; ++task) {
-      const Index overflow_first = static_cast<Index>(plan_.overflow_target.size());
+      for (const Index s : plan_.steps_of(task)) task_end += plan_.steps[at(s)].columns;
+      overflow_of.clear();
       const auto target = [&](Index column, Index slot) {
-        if (task == plan_.tasks || task_at[at(column)] == task) return slot;
-        Index& overflow = overflow_of[at(slot)];
-        if (overflow < overflow_first) {
-          overflow = static_cast<Index>(plan_.overflow_target.size());
-          plan_.overflow_target.push_back(slot);
-        }
-        return plan_.slots() + overflow;
+        if (column < task_end) return slot;
+        const Index next = plan_.slots() + static_cast<Index>(plan_.overflow_target.size());
+        const auto [known, is_new] = overflow_of.try_emplace(slot, next);
+        if (is_new) plan_.overflow_target.push_back(slot);
+        return known->second;
       };
       for (const Index s : plan_.steps_of(task)) {
         auto& step = plan_.steps[at(s)];
@@ -239,18 +294,33 @@ class Planner {
   }
 
   void locate_edges(std::span<const Edge> edges) {
-    plan_.source.assign(at(plan_.slots()), EliminationPlan::kFill);
+    plan_.edge_column.resize(edges.size());
     plan_.edge_slot.resize(edges.size());
+    std::vector<bool> filled(at(plan_.slots()), true);
+    const auto fetch = [&](std::size_t e) {
+      if (e + kAhead >= edges.size()) return;
+      const Edge& later = edges[e + kAhead];
+      __builtin_prefetch(&plan_.position_of[at(later.i)]);
+      __builtin_prefetch(&plan_.position_of[at(later.j)]);
+      const Edge& soon = edges[e + kAhead / 2];
+      const Index column = std::min(plan_.position_of[at(soon.i)], plan_.position_of[at(soon.j)]);
+      __builtin_prefetch(&plan_.column_begin[at(column)]);
+    };
     for (std::size_t e = 0; e < edges.size(); ++e) {
+      fetch(e);
       const auto [a, b] = std::minmax(plan_.position_of[at(edges[e].i)], plan_.position_of[at(edges[e].j)]);
+      plan_.edge_column[e] = a;
       plan_.edge_slot[e] = plan_.find_slot(a, b);
-      plan_.source[at(plan_.edge_slot[e])] = static_cast<Index>(e);
+      filled[at(plan_.edge_slot[e])] = false;
     }
     plan_.row_slot.resize(at(plan_.order));
-    for (Index row = 0; row < plan_.order; ++row) {
-      const Index slot = plan_.diagonal_slot(plan_.position_of[at(row)]);
-      plan_.row_slot[at(row)] = slot;
-      plan_.source[at(slot)] = EliminationPlan::source_of_row(row);
+    for (Index row = 0; row < plan_.order; ++row)
+      plan_.row_slot[at(row)] = plan_.diagonal_slot(plan_.position_of[at(row)]);
+    plan_.fill_slots.reserve(at(plan_.slots() - plan_.order) - edges.size());
+    for (Index p = 0; p < plan_.order; ++p) {
+      for (Index slot = plan_.column_begin[at(p)]; slot < plan_.diagonal_slot(p); ++slot) {
+        if (filled[at(slot)]) plan_.fill_slots.push_back(slot);
+      }
     }
   }
 
@@ -271,7 +341,10 @@ class Planner {
       add_column(plan_.order - 1);
       add_column(plan_.order / 2);
     }
+    std::vector<bool> on_path(at(plan_.order), false);  // by row: small, so that the many misses are cheap
+    for (const Index p : spot.path) on_path[at(plan_.row_of[at(p)])] = true;
     for (std::size_t e = 0; e < edges.size(); ++e) {
+      if (!on_path[at(edges[e].i)] && !on_path[at(edges[e].j)]) continue;
       const auto add = [&](Index equation, Index unknown) {
         const Index p = plan_.position_of[at(equation)];
         if (place[at(p)] < 0) return;
@@ -286,6 +359,9 @@ class Planner {
   Reduction reduction_;
   FrontStructure core_;
   std::vector<Block> blocks_;
+  std::vector<Index> part_begin_;   // position of the narrow columns of a task, of its fronts, of the next ..
+  std::vector<Index> block_at_;     // first position -> block
+  std::vector<Index> position_of_;  // vertex -> position
   EliminationPlan plan_;
 };
 

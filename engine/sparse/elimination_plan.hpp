@@ -1,6 +1,7 @@
 // Everything that elimination needs to know about a pattern: order, places of L, programs, fronts, tasks.
 #pragma once
 #include <cstddef>
+#include <ranges>
 #include <span>
 #include <vector>
 
@@ -19,13 +20,16 @@ namespace kiloamp::sparse {
 /// (b,b) (a,c) (b,c) (c,c), as many as there are. All other columns belong to fronts: dense lower triangles
 /// whose rows fall in position, pivots last.
 ///
+/// The positions of a task follow one another, narrow columns first. Those stand level by level: columns that
+/// do not wait for each other, and of equal length, side by side.
+///
 /// Tasks are disjoint unions of subtrees; what they update outside themselves goes to their own overflow
 /// slots (numbered after the ordinary ones) and is added to overflow_target[] afterwards, task by task. The
 /// partition depends on the pattern alone, so results do not depend on the number of threads.
 struct EliminationPlan {
   struct Step {
     Index first;         // position of the first column
-    Index columns;       // consecutive columns
+    Index columns;       // consecutive columns, few where they are narrow
     Index front;         // the front they form, -1: narrow columns
     Index target_begin;  // narrow: where their program starts in `targets`
     Index targets;       // narrow: its length
@@ -45,13 +49,10 @@ struct EliminationPlan {
   std::vector<Index> row_of;       // position -> row
   std::vector<Index> column_begin{0};
   std::vector<Index> rows;
-  std::vector<Index> source;     // slot -> edge whose value starts there, kFill, or see source_of_row
-  std::vector<Index> edge_slot;  // edge -> slot
-  std::vector<Index> row_slot;   // row -> slot of its diagonal
-
-  static constexpr Index kFill = -1;
-  /// Source of the diagonal slot of a row.
-  static constexpr Index source_of_row(Index row) { return -2 - row; }
+  std::vector<Index> edge_column;  // edge -> position of the column that holds it
+  std::vector<Index> edge_slot;    // edge -> slot
+  std::vector<Index> row_slot;     // row -> slot of its diagonal
+  std::vector<Index> fill_slots;   // slots where A has no entry, rising
 
   std::vector<Step> steps;
   std::vector<Index> targets;
@@ -63,7 +64,6 @@ struct EliminationPlan {
   /// steps_of(t): ids of the steps of task t in elimination order; t = tasks is the serial top.
   Index tasks = 0;
   std::vector<Index> task_step_begin;
-  std::vector<Index> task_steps;
   std::vector<Index> overflow_begin{0};  // per task
   std::vector<Index> overflow_target;
 
@@ -98,10 +98,9 @@ struct EliminationPlan {
   }
   /// Slot of the place (a, b), a < b, which must be in the structure of L.
   [[nodiscard]] Index find_slot(Index a, Index b) const;
-  [[nodiscard]] std::span<const Index> steps_of(Index task) const {
-    const auto from = static_cast<std::size_t>(task_step_begin[static_cast<std::size_t>(task)]);
-    const auto to = static_cast<std::size_t>(task_step_begin[static_cast<std::size_t>(task) + 1]);
-    return std::span<const Index>(task_steps).subspan(from, to - from);
+  [[nodiscard]] auto steps_of(Index task) const {
+    return std::views::iota(task_step_begin[static_cast<std::size_t>(task)],
+                            task_step_begin[static_cast<std::size_t>(task) + 1]);
   }
 };
 

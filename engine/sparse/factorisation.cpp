@@ -72,11 +72,13 @@ void Factorisation<Scalar, Lanes>::Body::measure(const Values<Scalar, Lanes>& va
     double input = 0;
     double met = 0;
     double worst = 0;
-    for (const auto& watch : factors.watches) {
-      input = std::max(watch.largest_input_squared[s], input);
-      if (std::isnan(watch.largest_input_squared[s])) {
+    for (const auto& largest : factors.largest_input_squared) {
+      if (std::isnan(largest[s])) {
         throw NumericalError("the matrix has an entry that is not a finite number", 0, static_cast<int>(s));
       }
+      input = std::max(input, largest[s]);
+    }
+    for (const auto& watch : factors.watches) {
       met = std::max(met, watch.largest_squared[s]);
       worst = std::max(worst, watch.worst[s][0].squared);
     }

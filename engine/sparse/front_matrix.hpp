@@ -34,11 +34,8 @@ struct FrontMatrix {
       to = row[column];
     } else {
       const Stripe& stripe = row[column / kPerStripe];
-      const int from = column % kPerStripe * Width;
-      for (int s = 0; s < Width; ++s) {
-        set_lane<Width>(to.re, s, stripe.re[from + s]);
-        if constexpr (kIsComplex<Scalar>) set_lane<Width>(to.im, s, stripe.im[from + s]);
-      }
+      to.re = *place<const Doubles<Width>>(stripe.re, column);
+      if constexpr (kIsComplex<Scalar>) to.im = *place<const Doubles<Width>>(stripe.im, column);
     }
   }
   static void set(Stripe* row, Index column, const Entry& from) {
@@ -46,11 +43,8 @@ struct FrontMatrix {
       row[column] = from;
     } else {
       Stripe& stripe = row[column / kPerStripe];
-      const int to = column % kPerStripe * Width;
-      for (int s = 0; s < Width; ++s) {
-        set_lane<4>(stripe.re, to + s, get_lane<Width>(from.re, s));
-        if constexpr (kIsComplex<Scalar>) set_lane<4>(stripe.im, to + s, get_lane<Width>(from.im, s));
-      }
+      *place<Doubles<Width>>(stripe.re, column) = from.re;
+      if constexpr (kIsComplex<Scalar>) *place<Doubles<Width>>(stripe.im, column) = from.im;
     }
   }
   /// The same entry in every place of a stripe.
@@ -66,6 +60,14 @@ struct FrontMatrix {
       get(other, &from, c);
       add(to, other);
     }
+  }
+
+ private:
+  /// Where the lanes of an entry lie in its stripe. An address: to choose among registers would be a jump
+  /// that the machine cannot guess.
+  template <typename To, typename Four>
+  static To* place(Four& four, Index column) {
+    return reinterpret_cast<To*>(&four) + column % kPerStripe;
   }
 };
 

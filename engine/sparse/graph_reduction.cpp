@@ -23,6 +23,7 @@ class Reducer {
       lists_[at(v)] = {end, 0, degree_[at(v)] + 1};
       end += at(degree_[at(v)]) + 1;
     }
+    pool_.reserve(2 * end);  // what lists of the core need when they grow: moving all would cost more
     pool_.resize(end);
     for (const Edge& edge : edges) {
       push(edge.i, edge.j);
@@ -48,7 +49,7 @@ class Reducer {
       }
       round_rows_.clear();
     }
-    collect_core();
+    number_vertices();
     return std::move(result_);
   }
 
@@ -140,19 +141,26 @@ class Reducer {
     result_.neighbours.push_back(around);
   }
 
-  void collect_core() {
-    const auto order = static_cast<Index>(lists_.size());
-    std::vector<Index>& local = round_;  // free now: becomes row -> vertex of the core
-    for (Index v = 0; v < order; ++v) {
+  /// Lists the core and turns neighbours from rows to vertices.
+  void number_vertices() {
+    std::vector<Index>& vertex_of = round_;  // free now
+    Index vertex = 0;
+    for (const Index v : result_.sequence) vertex_of[at(v)] = vertex++;
+    const Index first = vertex;
+    result_.core.reserve(lists_.size() - result_.sequence.size());
+    for (Index v = 0; v < static_cast<Index>(lists_.size()); ++v) {
       if (eliminated_[at(v)] != 0) continue;
-      local[at(v)] = static_cast<Index>(result_.core.size());
+      vertex_of[at(v)] = vertex++;
       result_.core.push_back(v);
+    }
+    for (auto& around : result_.neighbours) {
+      for (Index& other : around) other = other < 0 ? -1 : vertex_of[at(other)];
     }
     PackedGraph& graph = result_.core_graph;
     graph.begin.reserve(result_.core.size() + 1);
     for (const Index v : result_.core) {
       for (const Index other : list(v)) {
-        if (eliminated_[at(other)] == 0) graph.adjacency.push_back(local[at(other)]);
+        if (eliminated_[at(other)] == 0) graph.adjacency.push_back(vertex_of[at(other)] - first);
       }
       graph.begin.push_back(static_cast<Index>(graph.adjacency.size()));
     }

@@ -24,11 +24,12 @@ struct PackedGraph {
   }
 };
 
-/// The graph after its rows of low degree are eliminated.
+/// The graph after its rows of low degree are eliminated. Its vertices are the rows in another numbering:
+/// vertex k is row sequence[k], vertex sequence.size() + c is row core[c].
 struct Reduction {
   /// Eliminated rows, first to last.
   std::vector<Index> sequence;
-  /// Their neighbours at the moment of elimination (rows eliminated later); -1 fills the unused places.
+  /// Their neighbours at the moment of elimination: vertices of higher number; -1 fills the unused places.
   std::vector<std::array<Index, kLargestReducedDegree>> neighbours;
   /// Rows that remain.
   std::vector<Index> core;

@@ -1,5 +1,6 @@
 // Storage of L and D of several lanes on one plan, and the quality marks left by elimination.
 #pragma once
+#include <algorithm>
 #include <array>
 #include <limits>
 #include <memory>
@@ -49,8 +50,7 @@ struct PivotWatch {
     Index step = -1;
   };
   std::array<std::array<Mark, kKept>, Lanes> worst{};
-  std::array<double, Lanes> largest_squared{};        // largest |entry|^2 among pivot rows
-  std::array<double, Lanes> largest_input_squared{};  // largest |entry of A|^2; NaN where A is not finite
+  std::array<double, Lanes> largest_squared{};  // largest |entry|^2 among pivot rows
   /// 0 while all marks are finite and no |v|^2 or |d|^2 exceeds kSuspectGrowth^2 |a|^2; else positive or NaN.
   std::array<double, Lanes> grown{};
 
@@ -71,6 +71,9 @@ struct LaneFactors {
   LineArray<Pack<Scalar, Width>> slots;
   std::unique_ptr<Doubles<Width>[]> diagonal_squared;  // |a_pp|^2 by position
   std::vector<PivotWatch<Width>> watches;              // per task, the top last
+  /// Largest |entry of A|^2 in each share of the input, as many as tasks but at least one; NaN where A is not
+  /// finite.
+  std::vector<std::array<double, Width>> largest_input_squared;
 
   explicit LaneFactors(std::shared_ptr<const EliminationPlan> shared_plan)
       : plan(std::move(shared_plan)),
@@ -78,7 +81,8 @@ struct LaneFactors {
         slots(plan->all_slots()),
         diagonal_squared(
             std::make_unique_for_overwrite<Doubles<Width>[]>(static_cast<std::size_t>(plan->order))),
-        watches(static_cast<std::size_t>(plan->tasks) + 1) {}
+        watches(static_cast<std::size_t>(plan->tasks) + 1),
+        largest_input_squared(std::max<std::size_t>(static_cast<std::size_t>(plan->tasks), 1)) {}
 };
 
 }  // namespace kiloamp::sparse

@@ -49,14 +49,12 @@ class Prober {
     measure_magnification(rows);
     sums_.assign(at(plan_.order), Row{});
     for (std::size_t c = 0; c < rows.size(); ++c) start_with_unit(at(plan_.position_of[at(rows[c])]), c);
-    for (Index p = 0; p < plan_.order; ++p) {
-      gather(p, values_.diagonal[at(plan_.row_of[at(p)])], p);
-      for (Index slot = plan_.column_begin[at(p)]; slot < plan_.diagonal_slot(p); ++slot) {
-        const Index edge = plan_.source[at(slot)];
-        if (edge < 0) continue;
-        gather(p, values_.off_diagonal[at(edge)], plan_.rows[at(slot)]);
-        gather(plan_.rows[at(slot)], values_.off_diagonal[at(edge)], p);
-      }
+    for (Index p = 0; p < plan_.order; ++p) gather(p, values_.diagonal[at(plan_.row_of[at(p)])], p);
+    for (std::size_t e = 0; e < plan_.edges; ++e) {
+      const Index p = plan_.edge_column[e];
+      const Index other = plan_.rows[at(plan_.edge_slot[e])];
+      gather(p, values_.off_diagonal[e], other);
+      gather(other, values_.off_diagonal[e], p);
     }
     measure_mismatch();
   }
@@ -83,18 +81,18 @@ class Prober {
   void measure_rounding() {
     for (std::size_t s = 0; s < at(Lanes); ++s) {
       std::vector<Doubles<kBlock>> sizes(at(plan_.order), Doubles<kBlock>{});
-      for (Index p = 0; p < plan_.order; ++p) {
-        const Doubles<kBlock> mine = parts(solver_.at_position(p)[s]);
-        sizes[at(p)] += parts(values_.diagonal[at(plan_.row_of[at(p)])][s]) * mine;
-        for (Index slot = plan_.column_begin[at(p)]; slot < plan_.diagonal_slot(p); ++slot) {
-          const Index edge = plan_.source[at(slot)];
-          if (edge < 0) continue;
-          const Index other = plan_.rows[at(slot)];
-          const double a = parts(values_.off_diagonal[at(edge)][s]);
-          sizes[at(p)] += a * parts(solver_.at_position(other)[s]);
-          sizes[at(other)] += a * mine;
-        }
-        for (int c = 0; c < kBlock; ++c) results_[s].include({0, or_infinite(sizes[at(p)][c]), 0});
+      const auto add = [&](Index to, const Scalar& a, Index from) {
+        sizes[at(to)] += parts(a) * parts(solver_.at_position(from)[s]);
+      };
+      for (Index p = 0; p < plan_.order; ++p) add(p, values_.diagonal[at(plan_.row_of[at(p)])][s], p);
+      for (std::size_t e = 0; e < plan_.edges; ++e) {
+        const Index p = plan_.edge_column[e];
+        const Index other = plan_.rows[at(plan_.edge_slot[e])];
+        add(p, values_.off_diagonal[e][s], other);
+        add(other, values_.off_diagonal[e][s], p);
+      }
+      for (const Doubles<kBlock>& size : sizes) {
+        for (int c = 0; c < kBlock; ++c) results_[s].include({0, or_infinite(size[c]), 0});
       }
     }
   }

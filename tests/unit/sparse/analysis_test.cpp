@@ -69,15 +69,22 @@ BOOST_AUTO_TEST_CASE(structure_of_l_contains_the_fill_and_is_closed) {
   }
 }
 
-BOOST_AUTO_TEST_CASE(every_edge_starts_in_exactly_one_place) {
+BOOST_AUTO_TEST_CASE(every_entry_of_a_has_a_slot_and_every_other_slot_is_fill) {
   std::mt19937 random(7);
   for (const Graph& graph : test::unfriendly_graphs(random)) {
     const EliminationPlan plan = plan_elimination(graph.order, graph.edges);
-    std::vector<int> seen(graph.edges.size(), 0);
-    for (const Index edge : plan.source) {
-      if (edge >= 0) ++seen[at(edge)];
+    std::vector<int> seen(at(plan.slots()), 0);
+    for (const auto* slots : {&plan.edge_slot, &plan.row_slot, &plan.fill_slots}) {
+      for (const Index slot : *slots) ++seen[at(slot)];
     }
     BOOST_TEST(std::all_of(seen.begin(), seen.end(), [](int count) { return count == 1; }), graph.name);
+    bool in_column = true;
+    for (std::size_t e = 0; e < graph.edges.size(); ++e) {
+      const Index p = plan.edge_column[e];
+      in_column = in_column && plan.edge_slot[e] >= plan.column_begin[at(p)] &&
+                  plan.edge_slot[e] < plan.diagonal_slot(p);
+    }
+    BOOST_TEST(in_column, graph.name);
   }
 }
 
