@@ -2,6 +2,9 @@
 
 #include <algorithm>
 #include <cmath>
+#include <map>
+#include <queue>
+#include <unordered_set>
 
 #include "engine/network/terminals.hpp"
 #include "engine/study/local_network.hpp"
@@ -22,6 +25,7 @@ constexpr double kNoCurrent = 1e-9;
 bool is_source(ElementKind kind) {
   return kind == ElementKind::network_feeder || kind == ElementKind::synchronous_machine;
 }
+// Drives positive-sequence current.
 bool is_electromotive(ElementKind kind) {
   return is_source(kind) || kind == ElementKind::induction_motor || kind == ElementKind::inverter_source;
 }
@@ -38,12 +42,74 @@ double largest_phase(const BySequence<Complex>& sequence) {
   return most;
 }
 
-// A solved network in one state, and where its elements end.
-struct Base {
+// A solved network in one state, where its elements end, and how far each node is from a source.
+class Base {
+ public:
   Base(Network&& network, const StudyOptions& options)
-      : study(std::move(network), options), terminals(study.model()) {}
+      : study(std::move(network), options),
+        terminals(study.model()),
+        distance_(study.model().node_count(), kFar) {
+    const SequenceModel& m = study.model();
+    std::vector<Node> reached;
+    for (std::uint32_t n = 0; n < distance_.size(); ++n) {
+      const auto node = static_cast<Node>(n);
+      for (auto t = m.terminal_start[n]; t < m.terminal_start[n + 1]; ++t)
+        if (is_electromotive(m.terminals[t].element.kind)) distance_[n] = 0;
+      if (distance_[n] == 0) reached.push_back(node);
+    }
+    for (std::size_t i = 0; i < reached.size(); ++i)
+      for_each_neighbour(reached[i], {}, [&](Node next) {
+        if (distance_[at(next)] != kFar) return;
+        distance_[at(next)] = distance_[at(reached[i])] + 1;
+        reached.push_back(next);
+      });
+  }
+
+  /// A source still reaches `start` when two elements lead nowhere. The way is sought where sources are near.
+  [[nodiscard]] bool is_fed(Node start, const std::array<std::optional<ElementRef>, 2>& without) const {
+    const SequenceModel& m = study.model();
+    using Place = std::pair<std::uint32_t, Node>;
+    std::priority_queue<Place, std::vector<Place>, std::greater<>> open;
+    std::unordered_set<std::int32_t> seen;
+    const auto visit = [&](Node node) {
+      if (distance_[at(node)] != kFar && seen.insert(static_cast<std::int32_t>(node)).second)
+        open.emplace(distance_[at(node)], node);
+    };
+    visit(start);
+    while (!open.empty()) {
+      const Node node = open.top().second;
+      open.pop();
+      for (auto t = m.terminal_start[at(node)]; t < m.terminal_start[at(node) + 1]; ++t) {
+        const ElementRef element = m.terminals[t].element;
+        if (is_electromotive(element.kind) && element != without[0] && element != without[1]) return true;
+      }
+      for_each_neighbour(node, without, visit);
+    }
+    return false;
+  }
+
   Study study;
   TerminalTable terminals;
+
+ private:
+  static constexpr std::uint32_t kFar = UINT32_MAX;
+
+  template <typename Visit>
+  void for_each_neighbour(Node node, const std::array<std::optional<ElementRef>, 2>& without,
+                          Visit&& visit) const {
+    const SequenceModel& m = study.model();
+    for (auto t = m.terminal_start[at(node)]; t < m.terminal_start[at(node) + 1]; ++t) {
+      const ElementRef element = m.terminals[t].element;
+      if (element == without[0] || element == without[1]) continue;
+      const auto& slot = study.solver().solved().slots(t)[0];
+      const Block& block = m.blocks[slot.block];
+      for (std::uint32_t q = 0; q < block.count; ++q)
+        if (m.block_y[block.first_y + slot.position * block.count + q][kPositive] != Complex(0))
+          visit(m.terminals[m.block_terminals[block.first + q]].node);
+    }
+  }
+
+  std::vector<std::uint32_t> distance_;  // branches to the nearest source, positive sequence
 };
 
 // A line out of the network whose coupled group still has its rows.
@@ -57,7 +123,8 @@ struct View {
   const Base& base;
   const LocalNetwork& z;
   RelayState state;
-  LostParts::Lost lost_positive{}, lost_zero{};
+  const LostParts::Lost* lost_positive = nullptr;
+  const LostParts::Lost* lost_zero = nullptr;
   std::optional<Removed> removed{};
 
   [[nodiscard]] const SequenceModel& model() const { return base.study.model(); }
@@ -68,8 +135,8 @@ struct View {
   [[nodiscard]] bool has_zero_path(Node n) const {
     return model().has_zero_path[at(n)] && !is_in(lost_zero, n);
   }
-  static bool is_in(const LostParts::Lost& lost, Node n) {
-    return std::find(lost.nodes.begin(), lost.nodes.end(), n) != lost.nodes.end();
+  static bool is_in(const LostParts::Lost* lost, Node n) {
+    return lost != nullptr && std::find(lost->nodes.begin(), lost->nodes.end(), n) != lost->nodes.end();
   }
 };
 
@@ -169,7 +236,9 @@ class Rows {
 
   void line_end(const View& view, std::uint32_t far) {
     const LocalNetwork::OpenEnd end = view.z.open(view.model(), far, row_of(view, far));
-    if (!view.z.has_path(end, kPositive) || !fed_without_branch(view)) return;
+    if (!view.z.has_path(end, kPositive) ||
+        !view.base.is_fed(view.model().terminals[terminal_].node, {location_.branch, view.state.element}))
+      return;
     const FaultAt fault{
         RelayFaultPlace::line_end, view.model().terminals[far].bus, view.z.z_of_end(end),
         view.z.has_path(end, kZero) && view.has_zero_path(view.model().terminals[terminal_].node),
@@ -177,31 +246,6 @@ class Rows {
     solve(view, fault, [&](std::uint32_t t) {
       return t == far ? view.z.z_of_end(end) : view.z.z_to_end(view.model().terminals[t].node, end);
     });
-  }
-
-  // A source reaches the relay's bus although its branch, and what the state takes out, leads nowhere.
-  bool fed_without_branch(const View& view) const {
-    const SequenceModel& m = view.model();
-    std::vector<Node> reached{m.terminals[terminal_].node};
-    std::vector<bool> seen(m.node_count(), false);
-    seen[at(reached.front())] = true;
-    for (std::size_t i = 0; i < reached.size(); ++i)
-      for (auto t = m.terminal_start[at(reached[i])]; t < m.terminal_start[at(reached[i]) + 1]; ++t) {
-        const ElementRef element = m.terminals[t].element;
-        if (element == location_.branch || element == view.state.element) continue;
-        const auto& slot = view.solved().slots(t)[0];
-        const Block& block = m.blocks[slot.block];
-        if (block.count == 1 && is_electromotive(element.kind)) return true;
-        for (std::uint32_t q = 0; q < block.count; ++q) {
-          const Node node = m.terminals[m.block_terminals[block.first + q]].node;
-          const bool joined =
-              m.block_y[block.first_y + slot.position * block.count + q][kPositive] != Complex(0);
-          if (!joined || seen[at(node)]) continue;
-          seen[at(node)] = true;
-          reached.push_back(node);
-        }
-      }
-    return false;
   }
 
   void solve(const View& view, const FaultAt& fault, const Drop& drop) {
@@ -360,6 +404,14 @@ struct RelayStudy::Body {
   std::unique_ptr<Base> intact;
   std::vector<std::pair<RelayState, std::unique_ptr<Base>>> others;
 
+  struct Source {
+    ElementRef element;
+    Complex y;
+  };
+  std::vector<Source> sources;
+  std::vector<sparse::Index> source_rows;
+
+  void list_sources();
   [[nodiscard]] std::optional<ElementRef> strongest_source(BusIndex bus, LocalNetwork::Solver& solver) const;
   [[nodiscard]] static std::vector<ElementRef> coupled_lines(const Network& network, ElementRef branch);
 };
@@ -368,13 +420,24 @@ class RelayStudy::Workspace {
  public:
   explicit Workspace(const Body& body)
       : solver(body.intact->study.solver().solved().factors().sparse_solver()),
-        lost(body.intact->study.model(), body.intact->study.solver().solved()) {
+        finder_(body.intact->study.model(), body.intact->study.solver().solved()) {
     for (const auto& [state, base] : body.others)
       other_solvers.push_back(base->study.solver().solved().factors().sparse_solver());
   }
+  /// What an element's outage cuts off does not depend on the location.
+  const LostParts::Lost& lost(const OutageChange& change, int sequence) {
+    auto& known = lost_[static_cast<std::size_t>(sequence)];
+    const auto found = known.find(change.element);
+    if (found != known.end()) return found->second;
+    return known.emplace(change.element, finder_.find(change, sequence)).first->second;
+  }
+
   LocalNetwork::Solver solver;
-  LostParts lost;
   std::vector<LocalNetwork::Solver> other_solvers;
+
+ private:
+  LostParts finder_;
+  std::array<std::map<ElementRef, LostParts::Lost>, 2> lost_;  // zero, positive sequence
 };
 
 RelayStudy::RelayStudy(const Network& network, const RelayOptions& options)
@@ -385,6 +448,7 @@ RelayStudy::RelayStudy(const Network& network, const RelayOptions& options)
   study.buses.clear();
   study.case_kind = CaseKind::max;
   body_->intact = std::make_unique<Base>(Network(network), study);
+  body_->list_sources();
   body_->locations = relay_locations(body_->intact->study.network(), options.everywhere);
   StudyOptions weak = study;
   weak.case_kind = CaseKind::min;
@@ -406,31 +470,27 @@ std::shared_ptr<RelayStudy::Workspace> RelayStudy::make_workspace() const {
   return std::make_shared<Workspace>(*body_);
 }
 
-std::optional<ElementRef> RelayStudy::Body::strongest_source(BusIndex bus,
-                                                             LocalNetwork::Solver& solver) const {
+void RelayStudy::Body::list_sources() {
   const SequenceModel& m = intact->study.model();
-  struct Source {
-    ElementRef element;
-    sparse::Index row;
-    Complex y;
-  };
-  std::vector<Source> sources;
-  std::vector<sparse::Index> rows;
   for (const Block& b : m.blocks) {
     const Terminal& t = m.terminals[m.block_terminals[b.first]];
     if (!is_source(t.element.kind)) continue;
-    sources.push_back({t.element, static_cast<sparse::Index>(t.node), m.block_y[b.first_y][kPositive]});
-    rows.push_back(sources.back().row);
+    sources.push_back({t.element, m.block_y[b.first_y][kPositive]});
+    source_rows.push_back(static_cast<sparse::Index>(t.node));
   }
+}
+
+std::optional<ElementRef> RelayStudy::Body::strongest_source(BusIndex bus,
+                                                             LocalNetwork::Solver& solver) const {
   solver.clear();
-  solver.put(0, static_cast<sparse::Index>(m.node_of_bus[at(bus)]), {0, 1, 0});
-  solver.solve_at(rows);
+  solver.put(0, static_cast<sparse::Index>(intact->study.model().node_of_bus[at(bus)]), {0, 1, 0});
+  solver.solve_at(source_rows);
   double most = 0;
   std::optional<ElementRef> strongest;
-  for (const Source& s : sources)
-    if (const double part = std::abs(s.y * solver.get(0, s.row)[kPositive]); part > most) {
+  for (std::size_t s = 0; s < sources.size(); ++s)
+    if (const double part = std::abs(sources[s].y * solver.get(0, source_rows[s])[kPositive]); part > most) {
       most = part;
-      strongest = s.element;
+      strongest = sources[s].element;
     }
   return strongest;
 }
@@ -476,8 +536,8 @@ void RelayStudy::at_location(std::size_t index, Workspace& workspace, std::vecto
     const auto suspect = change ? changed.apply(*change) : std::nullopt;
     if (suspect) {
       View view{base, changed, state};
-      view.lost_positive = workspace.lost.find(*change, kPositive);
-      if ((*suspect)[kZero]) view.lost_zero = workspace.lost.find(*change, kZero);
+      view.lost_positive = &workspace.lost(*change, kPositive);
+      if ((*suspect)[kZero]) view.lost_zero = &workspace.lost(*change, kZero);
       if (state.element->kind == ElementKind::line) view.removed = Removed{*state.element, earthed};
       make.of(view, around.further);
       continue;
