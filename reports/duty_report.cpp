@@ -274,15 +274,15 @@ class JsonWriter {
           ", \"branch\": " + (data.branch ? json_text(w.branch(data)) : "null") + ", \"standard\": \"" +
           standard_words(data.standard) + "\", \"basis\": " + json_text(basis(data)) + ", \"verdict\": \"" +
           verdict_name(d.verdict) + "\"";
-    member("rated_kv", data.rated_kv);
-    member("headroom_mva", d.headroom_mva);
+    append_member(out, "rated_kv", data.rated_kv);
+    append_member(out, "headroom_mva", d.headroom_mva);
     out += ", \"governing\": " + (d.governing ? std::to_string(*d.governing) : "null") + ",\n \"checks\": [";
     for (std::size_t i = 0; i < d.checks.size(); ++i) check(d.checks[i], i == 0 ? "\n  " : ",\n  ");
     out += "],\n \"sources\": [";
     for (std::size_t i = 0; i < d.feeds.size(); ++i) {
       out += (i > 0 ? ", " : "") + std::string("{\"element\": ") + json_text(w.id(d.feeds[i].source));
-      member("ka", d.feeds[i].ka);
-      member("share", d.feeds[i].share);
+      append_member(out, "ka", d.feeds[i].ka);
+      append_member(out, "share", d.feeds[i].share);
       out += '}';
     }
     out += "], \"findings\": [";
@@ -291,13 +291,6 @@ class JsonWriter {
   }
 
  private:
-  void member(const char* name, const std::optional<double>& value) {
-    out += std::string(", \"") + name + "\": ";
-    if (value)
-      append_shortest(out, *value);
-    else
-      out += "null";
-  }
   void check(const DutyCheck& c, const char* gap) {
     const bool known = c.has_duty();
     out += gap + std::string("{\"quantity\": \"") + quantity_name(c.quantity) + "\", \"unit\": \"" +
@@ -305,13 +298,13 @@ class JsonWriter {
     if (!c.why.empty()) out += ", \"why\": " + json_text(c.why);
     if (!c.note.empty()) out += ", \"note\": " + json_text(c.note);
     if (known) {
-      member("through_ka", c.through_ka);
-      member("x_over_r", c.x_over_r);
-      member("nacd", c.nacd);
-      member("factor", c.factor);
-      member("duty", c.duty);
-      member("rating", c.rating);
-      member("margin_percent", 100 * c.margin());
+      append_member(out, "through_ka", c.through_ka);
+      append_member(out, "x_over_r", c.x_over_r);
+      append_member(out, "nacd", c.nacd);
+      append_member(out, "factor", c.factor);
+      append_member(out, "duty", c.duty);
+      append_member(out, "rating", c.rating);
+      append_member(out, "margin_percent", 100 * c.margin());
       out += ", \"state\": " + json_text(w.state(c)) + ", \"fault\": \"" + fault_name(c.kind) +
              "\", \"side\": \"" + side_name(c.side) + "\"";
     }

@@ -11,6 +11,14 @@ std::string json_text(const std::string& text) {
   return nlohmann::json(text).dump(-1, ' ', false, nlohmann::json::error_handler_t::replace);
 }
 
+void append_member(std::string& out, const char* name, const std::optional<double>& value) {
+  out += std::string(", \"") + name + "\": ";
+  if (value)
+    append_shortest(out, *value);
+  else
+    out += "null";
+}
+
 namespace {
 
 void append_list(std::string& out, const std::vector<std::string>& texts) {

@@ -8,6 +8,8 @@ namespace kiloamp {
 
 /// A JSON string, quotes included.
 [[nodiscard]] std::string json_text(const std::string& text);
+/// `, "name": value`, null for an empty one.
+void append_member(std::string& out, const char* name, const std::optional<double>& value);
 /// From the opening brace to the cautions: what was studied, how, and with which assumptions. Ends ready for
 /// the study's own members.
 [[nodiscard]] std::string json_heading(const Studies& studies, const ReportFacts& facts);

@@ -58,28 +58,24 @@ class JsonPiece : public ReportPiece {
   std::string text;
 
  private:
-  void member(const char* name, const std::optional<double>& value) {
-    text += std::string(", \"") + name + "\": ";
-    optional(value);
-  }
   void iec60909_members(const iec60909::Quantities& q, bool inside_unit) {
     text += ", \"iec60909\": {\"c\": ";
     append_shortest(text, q.c);
-    member("ikss_ka", q.ikss_ka);
-    member("skss_mva", q.skss_mva);
-    member("r_over_x", q.r_over_x);
-    member("kappa", q.kappa);
-    member("ip_ka", q.ip_ka);
-    member("ib_ka", q.ib_ka);
-    member("idc_ka", q.idc_ka);
-    member("ib_asymmetric_ka", q.ib_asymmetric_ka);
-    member("ik_ka", q.ik_ka);
-    member("m", q.m);
-    member("n", q.n);
-    member("ith_ka", q.ith_ka);
-    member("i2t_ka2s", q.i2t_ka2s);
-    member("converter_ka", q.converter_ka);
-    member("motor_share_percent", q.motor_share_percent);
+    append_member(text, "ikss_ka", q.ikss_ka);
+    append_member(text, "skss_mva", q.skss_mva);
+    append_member(text, "r_over_x", q.r_over_x);
+    append_member(text, "kappa", q.kappa);
+    append_member(text, "ip_ka", q.ip_ka);
+    append_member(text, "ib_ka", q.ib_ka);
+    append_member(text, "idc_ka", q.idc_ka);
+    append_member(text, "ib_asymmetric_ka", q.ib_asymmetric_ka);
+    append_member(text, "ik_ka", q.ik_ka);
+    append_member(text, "m", q.m);
+    append_member(text, "n", q.n);
+    append_member(text, "ith_ka", q.ith_ka);
+    append_member(text, "i2t_ka2s", q.i2t_ka2s);
+    append_member(text, "converter_ka", q.converter_ka);
+    append_member(text, "motor_share_percent", q.motor_share_percent);
     if (inside_unit) text += ", \"inside_power_station_unit\": true";
     text += ", \"not_evaluated\": [";
     for (std::size_t i = 0; i < q.not_evaluated.size(); ++i)
@@ -91,10 +87,10 @@ class JsonPiece : public ReportPiece {
       for (std::size_t i = 0; i < q.machines.size(); ++i) {
         const iec60909::MachinePart& m = q.machines[i];
         text += (i > 0 ? ", " : "") + std::string("{\"element\": ") + id(m.element);
-        member("ikss_ka", m.ikss_ka);
-        member("ikss_over_ir", m.ratio);
-        member("mu", m.mu);
-        if (m.q) member("q", m.q);
+        append_member(text, "ikss_ka", m.ikss_ka);
+        append_member(text, "ikss_over_ir", m.ratio);
+        append_member(text, "mu", m.mu);
+        if (m.q) append_member(text, "q", m.q);
         text += '}';
       }
       text += ']';
@@ -105,19 +101,19 @@ class JsonPiece : public ReportPiece {
     const auto network = [&](const char* name, const ieee_c37::NetworkCurrent& n) {
       text += std::string("\"") + name + "\": {\"ez_ka\": ";
       append_shortest(text, n.ez_ka);
-      member("ex_ka", n.ex_ka);
-      member("x_over_r", n.x_over_r);
-      member("complex_x_over_r", n.complex_x_over_r);
+      append_member(text, "ex_ka", n.ex_ka);
+      append_member(text, "x_over_r", n.x_over_r);
+      append_member(text, "complex_x_over_r", n.complex_x_over_r);
     };
     text += ", \"c37\": {";
     network("first_cycle", q.first_cycle);
-    member("asymmetric_ka", q.asymmetric_ka);
-    member("crest_ka", q.crest_ka);
+    append_member(text, "asymmetric_ka", q.asymmetric_ka);
+    append_member(text, "crest_ka", q.crest_ka);
     text += "}, ";
     network("interrupting", q.interrupting);
-    member("nacd", q.nacd);
+    append_member(text, "nacd", q.nacd);
     text += '}';
-    member("delayed_ka", q.delayed_ka);
+    append_member(text, "delayed_ka", q.delayed_ka);
     text += '}';
   }
   std::string id(ElementRef ref) const { return json_text(element(study_.network(), ref).id); }

@@ -13,12 +13,6 @@ namespace {
 
 constexpr int kAmount = 6, kAngle = 3;
 
-double largest_phase(const BySequence<Complex>& sequence) {
-  double most = 0;
-  for (const Complex phase : to_phases(sequence)) most = std::max(most, std::abs(phase));
-  return most;
-}
-
 bool is_earth_fault(FaultKind kind) {
   return kind == FaultKind::line_to_ground || kind == FaultKind::double_line_to_ground;
 }
@@ -196,8 +190,8 @@ class JsonLocation {
   std::string of(const RelayLocation& l, std::span<const RelayRow> rows) {
     out = "{\"relay\": " + (l.relay ? json_text(element(n, *l.relay).id) : "null") +
           ", \"bus\": " + json_text(n.bus(l.bus).id) + ", \"branch\": " + json_text(element(n, l.branch).id);
-    member("ct_ratio", l.ct_ratio);
-    member("vt_ratio", l.vt_ratio);
+    append_member(out, "ct_ratio", l.ct_ratio);
+    append_member(out, "vt_ratio", l.vt_ratio);
     const Complex k0 = residual_compensation_of(study_.intact(), l.branch);
     out += ", \"k0\": ";
     polar(k0);
@@ -252,8 +246,8 @@ class JsonLocation {
     }
     out += std::string("}, \"direction\": ") +
            (row.direction ? (*row.direction == Direction::forward ? "\"forward\"" : "\"reverse\"") : "null");
-    member("infeed_factor", row.infeed_factor);
-    member("earth_share", row.earth_share);
+    append_member(out, "infeed_factor", row.infeed_factor);
+    append_member(out, "earth_share", row.earth_share);
     phasors("fault_ka", row.fault_ka);
     out += '}';
   }
@@ -276,13 +270,6 @@ class JsonLocation {
     out += ", ";
     append_shortest(out, degrees(value));
     out += ']';
-  }
-  void member(const char* name, const std::optional<double>& value) {
-    out += std::string(", \"") + name + "\": ";
-    if (value)
-      append_shortest(out, *value);
-    else
-      out += "null";
   }
 
   const Network& n;

@@ -1,5 +1,7 @@
 #include "engine/fault/fault.hpp"
 
+#include <algorithm>
+
 namespace kiloamp {
 
 std::array<Complex, 3> to_phases(const BySequence<Complex>& s) {
@@ -39,6 +41,12 @@ SequenceFault connect_sequences(FaultKind kind, const TheveninData& z, Complex e
   const Complex i1 = e / result.loop;
   result.current = {-i1 * z2 / (z2 + z0), i1, -i1 * z0 / (z2 + z0)};
   return result;
+}
+
+double largest_phase(const BySequence<Complex>& sequence) {
+  double most = 0;
+  for (const Complex phase : to_phases(sequence)) most = std::max(most, std::abs(phase));
+  return most;
 }
 
 Complex earth_fault_shift_pu(FaultKind kind, const TheveninData& z, Complex e,

@@ -17,6 +17,8 @@ inline const Complex kA{-0.5, 0.86602540378443864676};
 /// x0 + a x1 + a^2 x2. Source: Fortescue's transform.
 [[nodiscard]] std::array<Complex, 3> to_phases(const BySequence<Complex>& sequence);
 [[nodiscard]] BySequence<Complex> to_sequence(const std::array<Complex, 3>& phases);
+/// Largest magnitude of the three phases.
+[[nodiscard]] double largest_phase(const BySequence<Complex>& sequence);
 
 /// A short circuit. Every faulted phase goes through phase_ohm to a common point; in an earth fault that
 /// point goes through earth_ohm to earth. Line-to-ground is on phase a, the two-phase faults are on b and c.

@@ -114,8 +114,7 @@ void FaultSolver::solve(const Fault& fault, const FaultOptions& options, Workspa
                                    static_cast<sparse::Index>(model.node_of_bus[at(fault.bus)]), s);
     result.sequence_ka[s] = i_pu[s] * model.base_ka(fault.bus);
   }
-  for (const Complex phase : to_phases(result.sequence_ka))
-    result.current_ka = std::max(result.current_ka, std::abs(phase));
+  result.current_ka = largest_phase(result.sequence_ka);
   result.earth_current_ka = 3.0 * result.sequence_ka[kZero];
   if (solved.loop.real() != 0) result.x_over_r = solved.loop.imag() / solved.loop.real();
   result.peak_ka = peak_ka(result.current_ka, solved.loop);

@@ -33,10 +33,101 @@ const Section kOfFuses{{S::iec60282_1, S::iec60269, S::c37_41, S::ul248},
                        "iec60282-1, iec60269, c37.41 or ul248"};
 const Section kOfSwitchboards{{S::iec62271_200, S::iec61439, S::c37_20}, "iec62271-200, iec61439 or c37.20"};
 
-void judge_standard(Findings& out, ElementRef ref, const Device& d, const Section& section) {
-  if (std::find(section.standards.begin(), section.standards.end(), d.standard) == section.standards.end())
-    out.error(ref, "standard", std::string("not one for a ") + kind_name(ref.kind),
-              std::string("must be ") + section.words, "correct it, or move the device to the right section");
+// False: another section's, and its figures say nothing here.
+bool judge_standard(Findings& out, ElementRef ref, const Device& d, const Section& section) {
+  if (std::find(section.standards.begin(), section.standards.end(), d.standard) != section.standards.end())
+    return true;
+  out.error(ref, "standard", std::string("not one for a ") + kind_name(ref.kind),
+            std::string("must be ") + section.words, "correct it, or move the device to the right section");
+  return false;
+}
+
+// Which figures of a plate belong to which standards; another standard would leave them unread.
+struct Figure {
+  const char* field;
+  std::optional<double> Device::*value;
+  std::initializer_list<DeviceStandard> standards;
+};
+const Figure kFigures[] = {
+    {"breaking_ka", &Device::breaking_ka, {S::iec62271_100, S::iec60282_1, S::iec60269}},
+    {"making_peak_ka", &Device::making_peak_ka, {S::iec62271_100, S::iec62271_103}},
+    {"short_time_ka",
+     &Device::short_time_ka,
+     {S::iec62271_100, S::iec62271_103, S::iec62271_200, S::iec61439, S::c37_total_current, S::c37_k_factor,
+      S::c37_constant_ka, S::c37_13, S::c37_20}},
+    {"short_time_s", &Device::short_time_s, {S::iec62271_100, S::iec62271_103, S::iec62271_200, S::iec61439}},
+    {"dc_time_constant_ms", &Device::dc_time_constant_ms, {S::iec62271_100, S::c37_constant_ka}},
+    {"opening_time_s", &Device::opening_time_s, {S::iec62271_100}},
+    {"icu_ka", &Device::icu_ka, {S::iec60947_2}},
+    {"ics_ka", &Device::ics_ka, {S::iec60947_2}},
+    {"icm_ka", &Device::icm_ka, {S::iec60947_2, S::iec60947_3}},
+    {"icw_ka", &Device::icw_ka, {S::iec60947_2, S::iec60947_3}},
+    {"icw_s", &Device::icw_s, {S::iec60947_2, S::iec60947_3}},
+    {"k_factor", &Device::k_factor, {S::c37_k_factor}},
+    {"interrupting_mva", &Device::interrupting_mva, {S::c37_total_current}},
+    {"interrupting_ka",
+     &Device::interrupting_ka,
+     {S::c37_total_current, S::c37_k_factor, S::c37_constant_ka, S::c37_13, S::ul489, S::c37_41, S::ul248}},
+    {"close_latch_rms_ka", &Device::close_latch_rms_ka, {S::c37_total_current, S::c37_k_factor}},
+    {"close_latch_peak_ka", &Device::close_latch_peak_ka, {S::c37_k_factor, S::c37_constant_ka}},
+    {"interrupting_time_cycles",
+     &Device::interrupting_time_cycles,
+     {S::c37_total_current, S::c37_k_factor, S::c37_constant_ka}},
+    {"contact_parting_cycles",
+     &Device::contact_parting_cycles,
+     {S::c37_total_current, S::c37_k_factor, S::c37_constant_ka}},
+    {"test_power_factor", &Device::test_power_factor, {S::c37_13, S::ul489, S::c37_41, S::ul248}}};
+
+void judge_figures(Findings& out, ElementRef ref, const Device& d) {
+  const auto foreign = [&](const char* field) {
+    out.error(ref, field, "not a figure of this standard", "would not be used",
+              "delete it or correct the standard; to keep it as your own let its name begin with x_");
+  };
+  const auto is_one_of = [&](std::initializer_list<DeviceStandard> standards) {
+    return std::find(standards.begin(), standards.end(), d.standard) != standards.end();
+  };
+  for (const Figure& figure : kFigures)
+    if (d.*figure.value && !is_one_of(figure.standards)) foreign(figure.field);
+  if (d.instantaneous_trip && !is_one_of({S::iec60947_2, S::c37_13})) foreign("instantaneous_trip");
+  if (d.fused && d.standard != S::c37_13) foreign("fused");
+  if ((d.local_curve_x_over_r || d.local_curve_factor) &&
+      !is_one_of({S::c37_total_current, S::c37_k_factor, S::c37_constant_ka}))
+    foreign("local_curve_x_over_r, local_curve_factor");
+}
+
+// Pairs of figures of which one may not be above the other.
+void judge_order(Findings& out, ElementRef ref, const char* fields, const std::optional<double>& less,
+                 const std::optional<double>& more, const char* allowed) {
+  if (less && more && *less > *more)
+    out.error(ref, fields, number_text(*less) + " and " + number_text(*more), allowed,
+              "check which figure of the plate is which");
+}
+
+void judge_contradictions(Findings& out, ElementRef ref, const Device& d) {
+  judge_order(out, ref, "ics_ka, icu_ka", d.ics_ka, d.icu_ka,
+              "service breaking capacity is at most the ultimate one");
+  judge_order(out, ref, "icu_ka, icm_ka", d.icu_ka, d.icm_ka,
+              "a making current is a crest, above the rms it belongs to");
+  judge_order(out, ref, "breaking_ka, making_peak_ka", d.breaking_ka, d.making_peak_ka,
+              "a making current is a crest, above the rms it belongs to");
+  judge_order(out, ref, "short_time_ka, peak_withstand_ka", d.short_time_ka, d.peak_withstand_ka,
+              "a peak is above the rms it belongs to");
+  judge_order(out, ref, "contact_parting_cycles, interrupting_time_cycles", d.contact_parting_cycles,
+              d.interrupting_time_cycles, "contacts part before the current is interrupted");
+}
+
+// Standards for devices up to 1 kV (1.2 kV at most): their ratings say nothing above.
+void judge_voltage_class(Findings& out, ElementRef ref, const Device& d) {
+  const bool low_voltage = d.standard == S::iec60947_2 || d.standard == S::iec60947_3 ||
+                           d.standard == S::iec61439 || d.standard == S::iec60269 ||
+                           d.standard == S::c37_13 || d.standard == S::ul489 || d.standard == S::ul248;
+  constexpr double kMost_kv = 1.2;
+  const double nominal = out.network().bus(d.bus).nominal_kv;
+  if (low_voltage && nominal > kMost_kv)
+    out.error(ref, "standard",
+              "one for low voltage at bus \"" + out.network().bus(d.bus).id + "\" of " +
+                  number_text(nominal) + " kV",
+              "must be a standard for the voltage of its bus", "correct standard or bus");
 }
 
 // K = highest over lowest voltage at which the capability rises with falling voltage; rated voltages are
@@ -74,6 +165,9 @@ void judge_local_curve(Findings& out, ElementRef ref, const Device& d) {
 }
 
 void judge_ratings(Findings& out, ElementRef ref, const Device& d) {
+  judge_figures(out, ref, d);
+  judge_contradictions(out, ref, d);
+  judge_voltage_class(out, ref, d);
   judge_voltage_range(out, ref, d);
   judge_local_curve(out, ref, d);
   const double nominal = out.network().bus(d.bus).nominal_kv;
@@ -92,19 +186,19 @@ void judge_devices(Findings& out) {
   for (std::uint32_t i = 0; i < n.breakers.size(); ++i) {
     if (!out.judges({ElementKind::breaker, i})) continue;
     judge_place(out, {ElementKind::breaker, i}, n.breakers[i].bus, n.breakers[i].branch);
-    judge_standard(out, {ElementKind::breaker, i}, n.breakers[i], kOfBreakers);
-    judge_ratings(out, {ElementKind::breaker, i}, n.breakers[i]);
+    if (judge_standard(out, {ElementKind::breaker, i}, n.breakers[i], kOfBreakers))
+      judge_ratings(out, {ElementKind::breaker, i}, n.breakers[i]);
   }
   for (std::uint32_t i = 0; i < n.fuses.size(); ++i) {
     if (!out.judges({ElementKind::fuse, i})) continue;
     judge_place(out, {ElementKind::fuse, i}, n.fuses[i].bus, n.fuses[i].branch);
-    judge_standard(out, {ElementKind::fuse, i}, n.fuses[i], kOfFuses);
-    judge_ratings(out, {ElementKind::fuse, i}, n.fuses[i]);
+    if (judge_standard(out, {ElementKind::fuse, i}, n.fuses[i], kOfFuses))
+      judge_ratings(out, {ElementKind::fuse, i}, n.fuses[i]);
   }
   for (std::uint32_t i = 0; i < n.switchboards.size(); ++i) {
     if (!out.judges({ElementKind::switchboard, i})) continue;
-    judge_standard(out, {ElementKind::switchboard, i}, n.switchboards[i], kOfSwitchboards);
-    judge_ratings(out, {ElementKind::switchboard, i}, n.switchboards[i]);
+    if (judge_standard(out, {ElementKind::switchboard, i}, n.switchboards[i], kOfSwitchboards))
+      judge_ratings(out, {ElementKind::switchboard, i}, n.switchboards[i]);
   }
   for (std::uint32_t i = 0; i < n.relays.size(); ++i)
     if (out.judges({ElementKind::relay, i}))

@@ -18,10 +18,10 @@ inline constexpr int kZero = 0, kPositive = 1, kNegative = 2;
 /// Which part of every impedance a circuit is made of: the whole, or its reactance or resistance alone, as
 /// the separate networks for X/R of the ANSI/IEEE standards need.
 enum class Part : std::uint8_t { whole, reactance, resistance };
-/// Element X/R beyond which no resistance is believed: an element whose data give less (or none) has X / 1000
-/// in the network of resistances.
+/// Element X/R beyond which no resistance is believed: an element whose data give none has X / 1000 in the
+/// network of resistances.
 inline constexpr double kLargestElementXOverR = 1000;
-/// z; j Im z; or Re z, of which at least |Im z| / kLargestElementXOverR is taken when it is 0.
+/// z; j Im z; or Re z, for which |Im z| / kLargestElementXOverR stands when it is 0.
 [[nodiscard]] Complex part_of(Complex z, Part part);
 /// The same for an impedance that closes a path only as a shunt of its own: charging, capacitor banks,
 /// magnetising branches. It is no resistance to be reduced with others: in the network of resistances it is

@@ -3,63 +3,29 @@
 #include <algorithm>
 #include <atomic>
 #include <cmath>
-#include <limits>
 
+#include "engine/network/terminals.hpp"
 #include "engine/sparse/run_tasks.hpp"
+#include "engine/standard/iec60909/formulas.hpp"
 #include "engine/study/duty_feeds.hpp"
 #include "engine/study/duty_rules.hpp"
+#include "engine/study/duty_standing.hpp"
+#include "engine/study/duty_states.hpp"
+#include "engine/study/rounded_text.hpp"
 
 namespace kiloamp {
 
 namespace {
 
+using detail::DeviceStanding;
 using detail::Loading;
 using detail::Outcome;
 using detail::Rule;
 using detail::RuleFacts;
+using detail::Standing;
 using detail::Through;
 
 constexpr std::size_t kFeeds = 5;
-constexpr double kInfinite = std::numeric_limits<double>::infinity();
-
-// What is known of one rule of one device so far. Of equal loadings the first state, kind and side stay, so
-// that the order of threads does not show.
-struct Standing {
-  double loading = -1;
-  DutyCheck check;
-  std::string blocked;  // why some fault could not be judged; of the first such state
-  std::size_t blocked_state = SIZE_MAX;
-
-  [[nodiscard]] auto order() const { return std::tuple(check.state, check.kind, check.side); }
-  void merge(Standing&& other) {
-    if (other.loading > loading || (other.loading == loading && other.order() < order())) {
-      loading = other.loading;
-      check = std::move(other.check);
-    }
-    if (other.blocked_state < blocked_state) {
-      blocked = std::move(other.blocked);
-      blocked_state = other.blocked_state;
-    }
-  }
-};
-struct DeviceStanding {
-  std::vector<Standing> rules;
-  double headroom_ka = kInfinite;
-  std::string finding;  // of the simplified check, at its largest interrupting current
-  double finding_ka = -1;
-  std::size_t finding_state = SIZE_MAX;
-
-  void merge(DeviceStanding&& other) {
-    for (std::size_t r = 0; r < rules.size(); ++r) rules[r].merge(std::move(other.rules[r]));
-    headroom_ka = std::min(headroom_ka, other.headroom_ka);
-    if (other.finding_ka > finding_ka ||
-        (other.finding_ka == finding_ka && other.finding_state < finding_state)) {
-      finding = std::move(other.finding);
-      finding_ka = other.finding_ka;
-      finding_state = other.finding_state;
-    }
-  }
-};
 
 // A device, and what its standard compares.
 struct Judged {
@@ -68,27 +34,35 @@ struct Judged {
   std::vector<Rule> rules;
 };
 
-double largest_phase(const BySequence<Complex>& sequence) {
-  double most = 0;
-  for (const Complex phase : to_phases(sequence)) most = std::max(most, std::abs(phase));
-  return most;
+// A part of a fault's current, its own X/R, and both in C37's interrupting network.
+struct Part {
+  double ka = 0, interrupting_ka = 0;
+  std::optional<double> x_over_r, interrupting_x_over_r;
+};
+
+BySequence<Complex> less(const BySequence<Complex>& total, const BySequence<Complex>& own) {
+  return {total[0] - own[0], total[1] - own[1], total[2] - own[2]};
 }
 
-// Current of an element into the faulted bus; empty: the element is not in the network of that state.
+// Current of an element into the faulted bus; empty: it has no part in that network.
 std::optional<BySequence<Complex>> own_current(const FaultResult& fault, ElementRef branch) {
   for (const Contribution& c : fault.contributions)
     if (c.element == branch) return c.sequence_ka;
   return std::nullopt;
 }
 
-double less(const BySequence<Complex>& total, const BySequence<Complex>& own) {
-  return largest_phase({total[0] - own[0], total[1] - own[1], total[2] - own[2]});
+// The branch is there, although it may feed nothing (a motor behind a converter, one that has died away).
+bool is_connected(const Network& n, ElementRef branch) {
+  const auto buses = buses_of(n, branch);
+  return element(n, branch).is_in_service() &&
+         (branch.kind != ElementKind::bus_switch || n.switches[branch.index].closed) &&
+         std::all_of(buses.begin(), buses.end(), [&](BusIndex b) { return n.bus(b).is_in_service(); });
 }
 
 class Duty {
  public:
   Duty(const Network& network, const DutyOptions& options) : network_(network), options_(options) {
-    list_states();
+    table_.states = detail::duty_states(network, options);
     list_devices();
   }
 
@@ -97,18 +71,22 @@ class Duty {
  private:
   using Standings = std::vector<DeviceStanding>;
 
-  void list_states();
   void list_devices();
   [[nodiscard]] Standings fresh() const;
-  [[nodiscard]] Network in_state(const DutyState& state) const;
   [[nodiscard]] StudyOptions study_options(DeviceFamily family, const DutyState& state, int threads) const;
   [[nodiscard]] std::vector<std::uint32_t>& of(DeviceFamily family) {
     return of_family_[static_cast<std::size_t>(family)];
   }
   void judge_state(std::size_t state, DeviceFamily family, int threads, Standings& standings);
+  /// Currents of the three-phase fault at the bus at hand.
+  struct ThreePhase {
+    double ka = 1, interrupting_ka = 0;
+  };
   void judge_bus(std::size_t state, const StudiedFault& fault, const FaultResult* interrupting,
-                 std::span<const std::uint32_t> devices, Standings& standings) const;
+                 std::span<const std::uint32_t> devices, const ThreePhase& three_phase,
+                 Standings& standings) const;
   void judge(std::size_t state, const Judged& judged, const Through& through, DeviceStanding& standing) const;
+  [[nodiscard]] RuleFacts facts_of(const Device& device) const;
   void conclude(Standings& standings);
   void find_feeds(int threads);
 
@@ -120,32 +98,37 @@ class Duty {
   DutyTable table_;
 };
 
-void Duty::list_states() {
-  const std::optional<std::size_t> first = options_.scenario;
-  table_.states.push_back({first, std::nullopt});
-  for (std::size_t s = 0; s < network_.scenarios.size() && !first; ++s)
-    if (network_.scenarios[s].is_in_service()) table_.states.push_back({s, std::nullopt});
-  if (!options_.outages) return;
-  Network base = network_;
-  if (first) apply_scenario(base, *first);
-  for_each_section(base, [&](ElementKind kind, const auto& section) {
-    if (kind != ElementKind::network_feeder && kind != ElementKind::synchronous_machine &&
-        kind != ElementKind::line && kind != ElementKind::transformer &&
-        kind != ElementKind::three_winding_transformer && kind != ElementKind::series_reactor &&
-        kind != ElementKind::bus_switch)
-      return;
-    for (std::uint32_t i = 0; i < section.size(); ++i)
-      if (section[i].is_in_service() && (kind != ElementKind::bus_switch || base.switches[i].closed))
-        table_.states.push_back({first, ElementRef{kind, i}});
-  });
+RuleFacts Duty::facts_of(const Device& d) const {
+  RuleFacts facts{network_.frequency_hz, options_.study.iec60909.duration_s, {}};
+  if (d.branch && d.branch->kind == ElementKind::synchronous_machine) {
+    const SynchronousMachine& m = network_.synchronous_machines[d.branch->index];
+    facts.machine_r_over_x = iec60909::fictitious_r_over_xd(m.rated_kv, m.rated_mva);
+  }
+  return facts;
 }
 
+// A device counts when it is in service in some state.
 void Duty::list_devices() {
-  const RuleFacts facts{network_.frequency_hz, options_.study.iec60909.duration_s};
+  std::vector<Network> networks;
+  for (const DutyState& state : table_.states) {
+    if (state.outage) continue;
+    networks.push_back(network_);
+    if (state.scenario) apply_scenario(networks.back(), *state.scenario);
+  }
+  const auto is_ever_live = [&](ElementRef ref, const Device& d) {
+    return std::any_of(networks.begin(), networks.end(), [&](const Network& n) {
+      return element(n, ref).is_in_service() && n.bus(d.bus).is_in_service();
+    });
+  };
   const auto add = [&](ElementKind kind, const auto& section) {
     for (std::uint32_t i = 0; i < section.size(); ++i) {
       const Device& d = section[i];
-      if (!d.is_in_service() || !network_.bus(d.bus).is_in_service()) continue;
+      if (!is_ever_live({kind, i}, d)) {
+        table_.warnings.push_back(std::string(kind_name(kind)) + " " + d.id +
+                                  " out of service in every state: not judged");
+        continue;
+      }
+      const RuleFacts facts = facts_of(d);
       const DeviceFamily family = family_of(d.standard);
       const auto index = static_cast<std::uint32_t>(judged_.size());
       judged_.push_back(
@@ -181,17 +164,6 @@ Duty::Standings Duty::fresh() const {
   return standings;
 }
 
-Network Duty::in_state(const DutyState& state) const {
-  Network network = network_;
-  if (!state.outage) return network;
-  if (state.scenario) apply_scenario(network, *state.scenario);
-  if (state.outage->kind == ElementKind::bus_switch)
-    network.switches[state.outage->index].closed = false;
-  else
-    element(network, *state.outage).in_service = false;
-  return network;
-}
-
 StudyOptions Duty::study_options(DeviceFamily family, const DutyState& state, int threads) const {
   StudyOptions options = options_.study;
   options.method = family == DeviceFamily::iec ? Method::iec60909 : Method::c37;
@@ -215,7 +187,8 @@ StudyOptions Duty::study_options(DeviceFamily family, const DutyState& state, in
 }
 
 void Duty::judge_state(std::size_t state, DeviceFamily family, int threads, Standings& standings) {
-  const Study study(in_state(table_.states[state]), study_options(family, table_.states[state], threads));
+  const Study study(detail::in_state(network_, table_.states[state]),
+                    study_options(family, table_.states[state], threads));
   if (state == 0) {
     for (const DefaultUse& use : study.defaults_used())  // both families fill the same ones in
       if (std::none_of(table_.defaults.begin(), table_.defaults.end(), [&](const DefaultUse& known) {
@@ -251,81 +224,115 @@ void Duty::judge_state(std::size_t state, DeviceFamily family, int threads, Stan
         for (std::size_t b = static_cast<std::size_t>(task) * kInTask;
              b < std::min(buses.size(), (static_cast<std::size_t>(task) + 1) * kInTask); ++b) {
           const auto here = std::span(devices).subspan(first[b], first[b + 1] - first[b]);
+          ThreePhase three_phase;
           mine->loop.at_bus(buses[b], [&](const StudiedFault& fault) {
-            if (fault.c37 != nullptr)
+            const FaultResult* interrupting = fault.c37 != nullptr ? &mine->interrupting : nullptr;
+            if (interrupting != nullptr)
               study.c37()->interrupting().solve(fault.result.fault, {}, *mine->workspace, mine->interrupting);
-            judge_bus(state, fault, fault.c37 != nullptr ? &mine->interrupting : nullptr, here, standings);
+            if (fault.result.fault.kind == FaultKind::three_phase && fault.result.current_ka > 0)
+              three_phase = {fault.result.current_ka, interrupting != nullptr ? interrupting->current_ka : 0};
+            judge_bus(state, fault, interrupting, here, three_phase, standings);
           });
         }
       });
 }
 
 void Duty::judge_bus(std::size_t state, const StudiedFault& fault, const FaultResult* interrupting,
-                     std::span<const std::uint32_t> devices, Standings& standings) const {
+                     std::span<const std::uint32_t> devices, const ThreePhase& three_phase,
+                     Standings& standings) const {
   const FaultResult& result = fault.result;
   if (!result.has_source || result.current_ka == 0) return;
+  const Network& now = fault.study->network();
   Through through;
   through.kind = result.fault.kind;
   through.fault = &fault;
   detail::FaultInTime in_time(fault);
   through.in_time = &in_time;
   const double converters_ka = fault.iec60909 != nullptr ? fault.iec60909->converter_ka : 0;
-  through.bus_ka = result.current_ka + converters_ka;
+  const Part whole{
+      result.current_ka + converters_ka, interrupting != nullptr ? interrupting->current_ka : 0, {}, {}};
+  through.bus_ka = whole.ka;
   through.operating_kv = result.prefault_kv * std::sqrt(3.0);
-  const double interrupting_total = interrupting != nullptr ? interrupting->current_ka : 0;
+  through.of_three_phase = std::max(result.current_ka / three_phase.ka,
+                                    interrupting != nullptr && three_phase.interrupting_ka > 0
+                                        ? interrupting->current_ka / three_phase.interrupting_ka
+                                        : 0);
+  const auto part = [&](const BySequence<Complex>& first, const BySequence<Complex>& later) {
+    Part p{
+        largest_phase(first) + converters_ka, largest_phase(later), detail::own_x_over_r(result, first), {}};
+    if (interrupting != nullptr) p.interrupting_x_over_r = detail::own_x_over_r(*interrupting, later);
+    return p;
+  };
   for (const auto d : devices) {
     const Judged& judged = judged_[d];
+    if (!element(now, judged.ref).is_in_service()) continue;
+    const auto judge_part = [&](DutySide side, const Part& p, bool loop = false) {
+      through.side = side;
+      through.ka = p.ka;
+      through.interrupting_ka = p.interrupting_ka;
+      through.own_x_over_r = p.x_over_r;
+      through.own_interrupting_x_over_r = p.interrupting_x_over_r;
+      through.in_switch_loop = loop;
+      judge(state, judged, through, standings[d]);
+    };
     const auto& branch = judged.device->branch;
     if (!branch) {
-      through.side = DutySide::total;
-      through.ka = through.bus_ka;
-      through.interrupting_ka = interrupting_total;
-      judge(state, judged, through, standings[d]);
+      judge_part(DutySide::total, whole);
       continue;
     }
-    const auto own = own_current(result, *branch);
-    if (!own) continue;  // its branch is out, or its coupler open
-    const auto own_later = interrupting != nullptr
-                               ? own_current(*interrupting, *branch).value_or(BySequence<Complex>{})
-                               : BySequence<Complex>{};
-    through.side = DutySide::beyond;
-    through.ka = less(result.sequence_ka, *own) + converters_ka;
-    through.interrupting_ka = interrupting != nullptr ? less(interrupting->sequence_ka, own_later) : 0;
-    judge(state, judged, through, standings[d]);
-    through.side = DutySide::own;
-    through.ka = largest_phase(*own) + converters_ka;
-    through.interrupting_ka = largest_phase(own_later);
-    judge(state, judged, through, standings[d]);
+    if (!is_connected(now, *branch)) continue;
+    if (branch->kind == ElementKind::bus_switch &&
+        detail::far_side(fault.study->model(), result.fault.bus, *branch).empty()) {
+      judge_part(DutySide::beyond, whole, true);  // the last of several ways to open carries everything
+      continue;
+    }
+    const auto own = own_current(result, *branch).value_or(BySequence<Complex>{});
+    BySequence<Complex> own_later{}, rest_later{};
+    if (interrupting != nullptr) {
+      own_later = own_current(*interrupting, *branch).value_or(BySequence<Complex>{});
+      rest_later = less(interrupting->sequence_ka, own_later);
+    }
+    judge_part(DutySide::beyond, part(less(result.sequence_ka, own), rest_later));
+    judge_part(DutySide::own, part(own, own_later));
   }
 }
 
 void Duty::judge(std::size_t state, const Judged& judged, const Through& through,
                  DeviceStanding& standing) const {
+  static constexpr double kRounded = 1.0001;
+  const auto& rated_kv = judged.device->rated_kv;
+  const bool above_rated =
+      through.fault->c37 != nullptr && rated_kv && through.operating_kv > kRounded * *rated_kv;
   for (std::size_t r = 0; r < judged.rules.size(); ++r) {
     const Rule& rule = judged.rules[r];
     if (!rule.evaluate) continue;
-    Outcome outcome = rule.evaluate(through);
+    Outcome outcome = above_rated
+                          ? Outcome("operating voltage " + detail::rounded_text(through.operating_kv, 2) +
+                                    " kV above rated_kv")
+                          : rule.evaluate(through);
     Standing one;
-    one.check.state = one.blocked_state = state;
     if (auto* why = std::get_if<std::string>(&outcome)) {
       one.check.state = SIZE_MAX;
       one.blocked = std::move(*why);
+      one.blocked_state = state;
       standing.rules[r].merge(std::move(one));
       continue;
     }
     Loading& loading = std::get<Loading>(outcome);
-    one.blocked_state = SIZE_MAX;
+    if (through.in_switch_loop)
+      loading.note = detail::joined(loading.note,
+                                    "one of several closed ways between its buses: the whole current, "
+                                    "which the last to open carries");
     one.loading = loading.rank.value_or(loading.duty / loading.rating);
-    one.check = {rule.quantity,          Verdict::within, std::move(loading.undecided),
-                 loading.duty,           loading.rating,  state,
-                 through.kind,           through.side,    loading.through_ka,
-                 loading.x_over_r,       loading.factor,  loading.nacd,
-                 std::move(loading.note)};
-    const bool added_source_flows_through = through.side != DutySide::own;
-    if (loading.linear && added_source_flows_through && through.kind == FaultKind::three_phase &&
-        loading.duty > 0)
+    one.check = {rule.quantity,        Verdict::within,        std::move(loading.undecided),
+                 loading.duty,         loading.rating,         state,
+                 through.kind,         through.side,           loading.through_ka,
+                 loading.x_over_r,     loading.factor,         loading.nacd,
+                 loading.interrupting, std::move(loading.note)};
+    if (loading.linear && through.side != DutySide::own && loading.duty > 0)
       standing.headroom_ka =
-          std::min(standing.headroom_ka, loading.through_ka * (loading.rating / loading.duty - 1));
+          std::min(standing.headroom_ka,
+                   loading.through_ka * (loading.rating / loading.duty - 1) / through.of_three_phase);
     standing.rules[r].merge(std::move(one));
   }
   if (through.fault->c37 == nullptr || through.interrupting_ka < standing.finding_ka) return;
@@ -335,68 +342,20 @@ void Duty::judge(std::size_t state, const Judged& judged, const Through& through
   standing.finding_state = state;
 }
 
-int badness(Verdict verdict) {
-  switch (verdict) {
-    case Verdict::over:
-      return 3;
-    case Verdict::not_evaluated:
-      return 2;
-    case Verdict::marginal:
-      return 1;
-    case Verdict::within:
-      return 0;
-  }
-  return 0;
-}
-
 void Duty::conclude(Standings& standings) {
   for (std::size_t d = 0; d < judged_.size(); ++d) {
-    const Judged& judged = judged_[d];
-    DeviceStanding& standing = standings[d];
-    DeviceDuty duty{judged.ref, {}, Verdict::within, {}, {}, {}, {}};
-    double most = -1;
-    for (std::size_t r = 0; r < judged.rules.size(); ++r) {
-      Standing& s = standing.rules[r];
-      DutyCheck check = std::move(s.check);
-      check.quantity = judged.rules[r].quantity;
-      if (!judged.rules[r].evaluate) {
-        check.verdict = Verdict::not_evaluated;
-        check.why = "missing: " + judged.rules[r].missing;
-      } else if (s.loading < 0 && s.blocked.empty()) {
-        check.verdict = Verdict::not_evaluated;
-        check.why = "no current through it in any state";
-      } else if (!check.why.empty()) {
-        check.verdict = Verdict::not_evaluated;
-      } else if (check.has_duty() && check.margin() < 0) {
-        check.verdict = Verdict::over;
-      } else if (!s.blocked.empty()) {
-        check.verdict = Verdict::not_evaluated;
-        check.why = s.blocked;
-      } else {
-        check.verdict = check.margin() < options_.marginal ? Verdict::marginal : Verdict::within;
-      }
-      if (s.loading > most) {
-        most = s.loading;
-        duty.governing = r;
-      }
-      if (badness(check.verdict) > badness(duty.verdict)) duty.verdict = check.verdict;
-      duty.checks.push_back(std::move(check));
-    }
-    for (const DutyCheck& c : duty.checks)  // also where more source at the bus is not what made it so
-      if (c.verdict == Verdict::over && c.quantity != DutyQuantity::dc_component)
-        standing.headroom_ka = std::min(standing.headroom_ka, c.through_ka * (c.rating / c.duty - 1));
-    if (std::isfinite(standing.headroom_ka))
-      duty.headroom_mva = std::sqrt(3.0) * network_.bus(judged.device->bus).nominal_kv * standing.headroom_ka;
-    if (!standing.finding.empty()) duty.findings.push_back(std::move(standing.finding));
+    DeviceDuty duty = detail::concluded(judged_[d].ref, judged_[d].rules, std::move(standings[d]),
+                                        network_.bus(judged_[d].device->bus).nominal_kv, options_.marginal);
+    const auto& branch = judged_[d].device->branch;
+    if (judged_[d].ref.kind == ElementKind::breaker && branch &&
+        branch->kind == ElementKind::synchronous_machine)
+      duty.findings.emplace_back(
+          "at a machine's terminals: what IEC/IEEE 62271-37-013 asks of a generator breaker "
+          "beyond these checks is not evaluated");
     ++table_.count[static_cast<std::size_t>(duty.verdict)];
     table_.devices.push_back(std::move(duty));
   }
-  const auto loading = [](const DeviceDuty& d) {
-    return d.governing ? 1 - d.checks[*d.governing].margin() : -1;
-  };
-  std::stable_sort(table_.devices.begin(), table_.devices.end(), [&](const auto& a, const auto& b) {
-    return std::tuple(badness(a.verdict), loading(a)) > std::tuple(badness(b.verdict), loading(b));
-  });
+  detail::sort_worst_first(table_.devices);
 }
 
 // The states that govern, once more.
@@ -412,13 +371,19 @@ void Duty::find_feeds(int threads) {
     const auto [family, state, row] = wanted[first];
     while (last < wanted.size() && std::get<0>(wanted[last]) == family && std::get<1>(wanted[last]) == state)
       ++last;
-    const Study study(in_state(table_.states[state]), study_options(family, table_.states[state], threads));
-    std::vector<std::optional<detail::FeedFinder>> finders(static_cast<std::size_t>(threads));
+    const Study study(detail::in_state(network_, table_.states[state]),
+                      study_options(family, table_.states[state], threads));
+    const FaultSolver& interrupting = study.c37() != nullptr ? study.c37()->interrupting() : study.solver();
+    struct Finders {
+      detail::FeedFinder first, interrupting;
+    };
+    std::vector<std::optional<Finders>> finders(static_cast<std::size_t>(threads));
     constexpr std::size_t kInTask = 16;
     const auto tasks = static_cast<int>((last - first + kInTask - 1) / kInTask);
     sparse::run_tasks(tasks, threads, [&, from = first, to = last](int task, int thread) {
       auto& finder = finders[static_cast<std::size_t>(thread)];
-      if (!finder) finder.emplace(study);
+      if (!finder)
+        finder.emplace(Finders{detail::FeedFinder(study.solver()), detail::FeedFinder(interrupting)});
       const std::size_t start = from + static_cast<std::size_t>(task) * kInTask;
       for (std::size_t i = start; i < std::min(to, start + kInTask); ++i) {
         DeviceDuty& d = table_.devices[std::get<2>(wanted[i])];
@@ -428,10 +393,10 @@ void Duty::find_feeds(int threads) {
           d.feeds = in.split(data.bus, data.branch, check.side, check.through_ka, kFeeds);
         };
         if (const auto inside = study.inside_unit(data.bus)) {
-          detail::FeedFinder own(*inside);
+          detail::FeedFinder own(inside->solver());
           split(own);
         } else {
-          split(*finder);
+          split(check.interrupting ? finder->interrupting : finder->first);
         }
       }
     });
@@ -465,33 +430,5 @@ DutyTable Duty::run() {
 }  // namespace
 
 DutyTable duty(const Network& network, const DutyOptions& options) { return Duty(network, options).run(); }
-
-const Device& device(const Network& network, ElementRef ref) {
-  if (ref.kind == ElementKind::fuse) return network.fuses[ref.index];
-  if (ref.kind == ElementKind::switchboard) return network.switchboards[ref.index];
-  return network.breakers[ref.index];
-}
-
-std::string state_name(const Network& network, const DutyState& state) {
-  std::string name = state.scenario ? network.scenarios[*state.scenario].id : "as written";
-  if (!state.outage) return name;
-  return (state.scenario ? name + " with " : "") + element(network, *state.outage).id +
-         (state.outage->kind == ElementKind::bus_switch ? " open" : " out");
-}
-
-const char* verdict_name(Verdict verdict) {
-  static constexpr const char* kNames[] = {"within", "marginal", "over", "not evaluated"};
-  return kNames[static_cast<std::size_t>(verdict)];
-}
-const char* quantity_name(DutyQuantity quantity) {
-  static constexpr const char* kNames[] = {"breaking",         "total breaking", "dc component",
-                                           "service breaking", "making peak",    "close and latch",
-                                           "short time",       "peak withstand"};
-  return kNames[static_cast<std::size_t>(quantity)];
-}
-const char* side_name(DutySide side) {
-  static constexpr const char* kNames[] = {"bus total", "fault beyond the device", "fault at the bus"};
-  return kNames[static_cast<std::size_t>(side)];
-}
 
 }  // namespace kiloamp

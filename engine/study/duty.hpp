@@ -14,8 +14,8 @@ struct DutyOptions {
   std::optional<DeviceFamily> family;
   /// Only this state. Empty: the case as written and every scenario.
   std::optional<std::size_t> scenario;
-  /// Also each single outage of a feeder, machine, line, transformer, reactor or closed coupler, from the
-  /// case as written (or from `scenario`). Each is a network of its own, solved anew.
+  /// Also each single outage of a feeder, machine, line, transformer (earthing ones too), reactor or closed
+  /// coupler, from the case as written (or from `scenario`). Each is a network of its own, solved anew.
   bool outages = false;
   double marginal = 0.10;  ///< a margin below this part of the rating is marginal
   /// Called now and then from one thread with how many states are done.
@@ -68,7 +68,8 @@ struct DutyCheck {
   DutySide side = DutySide::total;
   double through_ka = 0;  ///< ac rms through the device that the duty is made of
   std::optional<double> x_over_r, factor, nacd;
-  std::string note;  ///< which way of the standard was taken, where there is a choice
+  bool interrupting = false;  ///< through_ka is that of C37's interrupting network, not of its first cycle
+  std::string note;           ///< which way of the standard was taken, where there is a choice
   [[nodiscard]] bool has_duty() const { return rating > 0; }
   [[nodiscard]] double margin() const { return (rating - duty) / rating; }
 };
@@ -101,11 +102,13 @@ struct DutyTable {
   bool used_iec = false, used_c37 = false;
 };
 
-/// A device on a branch carries the larger of the bus total less its own branch (fault beyond it) and its own
-/// branch (fault at the bus), each the largest phase of phasor sums; a device without branch the total. IEC:
-/// I"k by IEC 60909-0, for a branch Ib = min(through I"k, total Ib) (no decay is credited to a part), peak,
-/// dc and Ith in the proportion of the total. C37: first-cycle and interrupting E/Z with the X/R of the
-/// separate networks. Ratings and formulas: standard/switchgear and standard/ieee_c37.
+/// Every device in service in some state is judged, in the states where it is. A device on a branch carries
+/// the larger of the bus total less its own branch (fault beyond it) and its own branch (fault at the bus),
+/// each the largest phase of phasor sums; a device without branch the total, and so does one on a coupler
+/// with closed ways beside it. IEC: I"k by IEC 60909-0, for a branch Ib = min(through I"k, total Ib), dc
+/// percentage of the least ac that may be left. C37: first-cycle and interrupting E/Z. Peak, dc, thermal and
+/// asymmetry factors are those of the whole fault (C37: X/R of the separate networks) or of the part by its
+/// own phase, whichever is larger. Ratings and formulas: standard/switchgear and standard/ieee_c37.
 ///
 /// The result does not depend on the number of threads.
 /// @throws NetworkError, sparse::NumericalError  as Study, for any state

@@ -13,36 +13,39 @@ bool is_source(ElementKind kind) {
          kind == ElementKind::induction_motor || kind == ElementKind::inverter_source;
 }
 
-// Terminals at the bus's node whose current flows through the branch's end at the bus; empty when a loop of
-// switches leaves that open.
+// Terminals at the bus's node whose current flows through the branch's end at the bus.
 std::vector<std::uint32_t> own_terminals(const SequenceModel& m, BusIndex bus, ElementRef branch) {
   const Node node = m.node_of_bus[at(bus)];
+  const bool is_switch = branch.kind == ElementKind::bus_switch;
+  const auto far = is_switch ? far_side(m, bus, branch) : std::vector<BusIndex>{};
   std::vector<std::uint32_t> own;
-  const auto first = m.terminal_start[at(node)], last = m.terminal_start[at(node) + 1];
-  if (branch.kind != ElementKind::bus_switch) {
-    for (auto t = first; t < last; ++t)
-      if (m.terminals[t].element == branch && m.terminals[t].bus == bus) own.push_back(t);
-    return own;
+  for (auto t = m.terminal_start[at(node)]; t < m.terminal_start[at(node) + 1]; ++t) {
+    const Terminal& terminal = m.terminals[t];
+    if (is_switch ? std::find(far.begin(), far.end(), terminal.bus) != far.end()
+                  : terminal.element == branch && terminal.bus == bus)
+      own.push_back(t);
   }
-  std::vector<BusIndex> far;
-  for (const MergedSwitch& s : m.closed_switches)
-    if (s.element == branch) far.push_back(s.from == bus ? s.to : s.from);
-  for (std::size_t i = 0; i < far.size(); ++i)
-    for (const MergedSwitch& s : m.closed_switches) {
-      if (s.element == branch || (s.from != far[i] && s.to != far[i])) continue;
-      const BusIndex next = s.from == far[i] ? s.to : s.from;
-      if (next == bus) return {};
-      if (std::find(far.begin(), far.end(), next) == far.end()) far.push_back(next);
-    }
-  for (auto t = first; t < last; ++t)
-    if (std::find(far.begin(), far.end(), m.terminals[t].bus) != far.end()) own.push_back(t);
   return own;
 }
 
 }  // namespace
 
-FeedFinder::FeedFinder(const Study& study)
-    : model_(study.model()), solved_(study.solver().solved()), solver_(solved_.factors().sparse_solver()) {
+std::vector<BusIndex> far_side(const SequenceModel& m, BusIndex bus, ElementRef opened) {
+  std::vector<BusIndex> far;
+  for (const MergedSwitch& s : m.closed_switches)
+    if (s.element == opened) far.push_back(s.from == bus ? s.to : s.from);
+  for (std::size_t i = 0; i < far.size(); ++i)
+    for (const MergedSwitch& s : m.closed_switches) {
+      if (s.element == opened || (s.from != far[i] && s.to != far[i])) continue;
+      const BusIndex next = s.from == far[i] ? s.to : s.from;
+      if (next == bus) return {};
+      if (std::find(far.begin(), far.end(), next) == far.end()) far.push_back(next);
+    }
+  return far;
+}
+
+FeedFinder::FeedFinder(const FaultSolver& solver)
+    : model_(solver.model()), solved_(solver.solved()), solver_(solved_.factors().sparse_solver()) {
   for (const Block& b : model_.blocks) {
     const auto t = model_.block_terminals[b.first];
     if (!is_source(model_.terminals[t].element.kind)) continue;
@@ -73,10 +76,7 @@ std::vector<DutyFeed> FeedFinder::split(BusIndex bus, const std::optional<Elemen
   const SequenceModel& m = model_;
   const Node k = m.node_of_bus[at(bus)];
   std::vector<std::uint32_t> own;
-  if (side != DutySide::total) {
-    own = own_terminals(m, bus, *branch);
-    if (own.empty()) return {};
-  }
+  if (side != DutySide::total) own = own_terminals(m, bus, *branch);
   // Own branch's other ends: their node's column, and y into the terminal at k.
   struct End {
     std::size_t column;

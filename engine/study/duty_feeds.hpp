@@ -5,6 +5,10 @@
 
 namespace kiloamp::detail {
 
+/// Buses that closed switches join to the far end of `opened` without it; empty: they join it to `bus` too,
+/// so that it stands in a loop of switches. `opened` is closed and ends at `bus`.
+[[nodiscard]] std::vector<BusIndex> far_side(const SequenceModel& model, BusIndex bus, ElementRef opened);
+
 /// One thread's way of splitting currents over the sources of a solved network by superposition, positive
 /// sequence: source j alone drives
 ///   I_total,j = y_j Z_jk          of the fault current at k, and through the own branch's terminals
@@ -12,10 +16,10 @@ namespace kiloamp::detail {
 /// A part counts with its share in phase with the whole.
 class FeedFinder {
  public:
-  explicit FeedFinder(const Study& study);
+  explicit FeedFinder(const FaultSolver& solver);
 
-  /// Largest first, at most `most`; empty when the branch is a closed switch in a loop of switches (its share
-  /// rests on an assumption), or has no current.
+  /// Largest first, at most `most`; of the whole fault when the branch is a switch in a loop of switches.
+  /// Empty: no current.
   [[nodiscard]] std::vector<DutyFeed> split(BusIndex bus, const std::optional<ElementRef>& branch,
                                             DutySide side, double through_ka, std::size_t most);
 

@@ -22,12 +22,20 @@ struct Through {
   FaultKind kind = FaultKind::three_phase;
   DutySide side = DutySide::total;
   const StudiedFault* fault = nullptr;
-  double ka = 0;                   ///< initial or first-cycle ac rms through the device
+  double ka = 0;  ///< initial or first-cycle ac rms through the device
+  /// X/R of the part that flows, from its phase against the driving voltage; empty: it is the whole, or says
+  /// nothing. Where it is above that of the whole fault, it decides dc and peak.
+  std::optional<double> own_x_over_r;
   double bus_ka = 0;               ///< of the whole fault
   FaultInTime* in_time = nullptr;  ///< IEC
   // C37 only
   double interrupting_ka = 0;
-  double operating_kv = 0;  ///< prefault, line to line
+  std::optional<double> own_interrupting_x_over_r;
+  double operating_kv = 0;      ///< prefault, line to line
+  bool in_switch_loop = false;  ///< its coupler has closed ways beside it
+  /// Current of this kind of fault over that of the three-phase one: how much more of it a three-phase source
+  /// adds at most.
+  double of_three_phase = 1;
 };
 
 struct Loading {
@@ -38,7 +46,8 @@ struct Loading {
   bool linear = true;  ///< duty grows in proportion to the current
   /// What chooses the governing fault; empty: duty over rating.
   std::optional<double> rank{};
-  std::string undecided{};  ///< not empty: no verdict follows if this fault governs, and why
+  std::string undecided{};    ///< not empty: no verdict follows if this fault governs, and why
+  bool interrupting = false;  ///< through_ka is that of C37's interrupting network
 };
 /// A loading, or why there is none.
 using Outcome = std::variant<Loading, std::string>;
@@ -52,7 +61,20 @@ struct Rule {
 struct RuleFacts {
   double frequency_hz = 50;
   double duration_s = 1;
+  /// R/X for the peak of the machine at whose terminals the device stands (IEC 60909-0, 6.6.1); empty
+  /// elsewhere.
+  std::optional<double> machine_r_over_x;
 };
+
+/// X/R of a part of a fault's current: the angle of Z1 at the fault and how much the part's positive sequence
+/// lags the whole's; on line to ground also the loop's angle and the lag in phase a, the larger of both. For
+/// sources that meet at the fault alone it is exactly that of the part's path. A part that lags the voltage
+/// by 90 degrees or more has kLargestElementXOverR. Empty: no current to speak of, or the part is not
+/// inductive.
+[[nodiscard]] std::optional<double> own_x_over_r(const FaultResult& fault, const BySequence<Complex>& part);
+
+/// Rules without a rated voltage cannot be judged.
+void require_rated_voltage(const Device& device, std::vector<Rule>& rules);
 
 /// The rules of a device of the IEC family, and of the ANSI family.
 [[nodiscard]] std::vector<Rule> iec_rules(const Device& device, const RuleFacts& facts);

@@ -15,6 +15,18 @@ constexpr const char* kNoRatio = "X/R of the separate networks is not positive";
 constexpr double kStandardTau_s = 0.045;
 constexpr double kMediumVoltageFuseTestXOverR = 15;  // common practice, no source
 
+constexpr const char* kOwnRatio = "X/R of the part that flows, above that of the whole fault";
+
+// X/R of the whole fault by the separate networks, or of the part that flows where it is larger.
+struct Ratio {
+  double x_over_r;
+  std::string note;
+};
+std::optional<Ratio> ratio_of(const std::optional<double>& whole, const std::optional<double>& part) {
+  if (!whole) return std::nullopt;
+  if (part && *part > *whole) return Ratio{*part, kOwnRatio};
+  return Ratio{*whole, {}};
+}
 bool is_line_to_ground(const Through& t) { return t.kind == FaultKind::line_to_ground; }
 
 // Symmetrical interrupting capability at the operating voltage, and the largest current it may have at any.
@@ -59,6 +71,14 @@ double remote_of(const Device& d, double x_over_r, double parting, double freque
   return constant_ka_factor(x_over_r, parting / frequency_hz, frequency_hz, tau_s);
 }
 
+// What the standard assumes of a breaker that states its interrupting time only.
+std::string timing_words(const Device& d, double parting) {
+  std::string text = "contact parting " + rounded_text(parting, 1) + " cycles by the rated interrupting time";
+  if (d.standard == DeviceStandard::c37_k_factor)
+    text += ", S " + rounded_text(asymmetry_of_rating(parting), 1);
+  return text;
+}
+
 void add_interrupting(std::vector<Rule>& rules, const Device& d, const RuleFacts& facts) {
   Rule rule{DutyQuantity::breaking, {}, {}};
   const Capability capability = capability_of(d);
@@ -71,27 +91,27 @@ void add_interrupting(std::vector<Rule>& rules, const Device& d, const RuleFacts
             ? "contact_parting_cycles (no contact parting time is known for this interrupting time)"
             : "interrupting_time_cycles or contact_parting_cycles";
   else
-    rule.evaluate = [capability, d = &d, parting = *parting,
-                     f = facts.frequency_hz](const Through& t) -> Outcome {
-      const auto& network = t.fault->c37->interrupting;
-      if (!network.x_over_r) return std::string(kNoRatio);
-      const double nacd = t.fault->c37->nacd, remote = remote_of(*d, *network.x_over_r, parting, f);
+    rule.evaluate = [capability, d = &d, parting = *parting, f = facts.frequency_hz,
+                     timing = d.contact_parting_cycles ? std::string() : timing_words(d, *parting)](
+                        const Through& t) -> Outcome {
+      const auto ratio = ratio_of(t.fault->c37->interrupting.x_over_r, t.own_interrupting_x_over_r);
+      if (!ratio) return std::string(kNoRatio);
+      const double nacd = t.fault->c37->nacd, remote = remote_of(*d, ratio->x_over_r, parting, f);
       double factor = remote;
-      std::string note;
+      std::string note = timing;
       if (nacd < 1 && d->local_curve_factor) {
-        factor = mixed_factor(
-            curve_value(*d->local_curve_x_over_r, *d->local_curve_factor, *network.x_over_r), remote, nacd);
-        note = "local and remote by NACD, the owner's curve";
+        factor = mixed_factor(curve_value(*d->local_curve_x_over_r, *d->local_curve_factor, ratio->x_over_r),
+                              remote, nacd);
+        note = joined(note, "local and remote by NACD, the owner's curve");
       } else if (nacd < 1) {
-        note = "remote factor: a curve with local decay was not given, errs to the safe side";
+        note =
+            joined(note, "remote factor for want of a curve with local decay, which errs to the safe side");
       }
-      return Loading{t.interrupting_ka * factor,
-                     capability.at(t),
-                     t.interrupting_ka,
-                     network.x_over_r,
-                     factor,
-                     nacd,
-                     note};
+      Loading loading{
+          t.interrupting_ka * factor, capability.at(t), t.interrupting_ka, ratio->x_over_r, factor, nacd,
+          joined(note, ratio->note)};
+      loading.interrupting = true;
+      return loading;
     };
   rules.push_back(std::move(rule));
 }
@@ -100,21 +120,21 @@ void add_interrupting(std::vector<Rule>& rules, const Device& d, const RuleFacts
 void add_close_latch(std::vector<Rule>& rules, const Device& d, const RuleFacts& facts) {
   const Capability capability = capability_of(d);
   const bool constant = d.standard == DeviceStandard::c37_constant_ka;
-  const auto rule_for = [&](DutyQuantity quantity, const std::optional<double>& plate, double ratio,
+  const auto rule_for = [&](DutyQuantity quantity, const std::optional<double>& plate, double times,
                             double (*factor_of)(double)) {
     Rule rule{quantity, {}, {}};
     if (!plate && !capability.missing.empty()) {
       rule.missing = capability.missing;
       return rule;
     }
-    const double rating = plate ? *plate : ratio * capability.most_ka;
+    const double rating = plate ? *plate : times * capability.most_ka;
     const std::string note =
-        plate ? "" : "rating " + rounded_text(ratio, 1) + " times the largest interrupting current";
+        plate ? "" : "rating " + rounded_text(times, 1) + " times the largest interrupting current";
     rule.evaluate = [=](const Through& t) -> Outcome {
-      const auto& xr = t.fault->c37->first_cycle.x_over_r;
-      if (!xr) return std::string(kNoRatio);
-      const double factor = factor_of(*xr);
-      return Loading{t.ka * factor, rating, t.ka, xr, factor, {}, note};
+      const auto ratio = ratio_of(t.fault->c37->first_cycle.x_over_r, t.own_x_over_r);
+      if (!ratio) return std::string(kNoRatio);
+      const double factor = factor_of(ratio->x_over_r);
+      return Loading{t.ka * factor, rating, t.ka, ratio->x_over_r, factor, {}, joined(note, ratio->note)};
     };
     return rule;
   };
@@ -137,7 +157,9 @@ void add_short_time(std::vector<Rule>& rules, const std::optional<double>& rated
   else
     rule.evaluate = [rating = *rated_ka, first_cycle, note = std::move(note)](const Through& t) {
       const double ka = first_cycle ? t.ka : t.interrupting_ka;
-      return Loading{ka, rating, ka, {}, {}, {}, note};
+      Loading loading{ka, rating, ka, {}, {}, {}, note};
+      loading.interrupting = !first_cycle;
+      return loading;
     };
   rules.push_back(std::move(rule));
 }
@@ -150,10 +172,10 @@ void add_tested(std::vector<Rule>& rules, const Device& d, double test, double (
     rule.missing = "interrupting_ka";
   else
     rule.evaluate = [=, rating = *d.interrupting_ka, note = std::move(note)](const Through& t) -> Outcome {
-      const auto& xr = t.fault->c37->first_cycle.x_over_r;
-      if (!xr) return std::string(kNoRatio);
-      const double factor = factor_of(*xr, test);
-      return Loading{t.ka * factor, rating, t.ka, xr, factor, {}, note};
+      const auto ratio = ratio_of(t.fault->c37->first_cycle.x_over_r, t.own_x_over_r);
+      if (!ratio) return std::string(kNoRatio);
+      const double factor = factor_of(ratio->x_over_r, test);
+      return Loading{t.ka * factor, rating, t.ka, ratio->x_over_r, factor, {}, joined(note, ratio->note)};
     };
   rules.push_back(std::move(rule));
 }
@@ -163,11 +185,6 @@ void add_low_voltage(std::vector<Rule>& rules, const Device& d, double standard_
   add_tested(
       rules, d, test_x_over_r(power_factor), fused ? rms_based_factor : peak_based_factor,
       "test power factor " + rounded_text(power_factor, 2) + (d.test_power_factor ? "" : " of the standard"));
-}
-
-bool is_high_voltage_breaker(const Device& d) {
-  return d.standard == DeviceStandard::c37_total_current || d.standard == DeviceStandard::c37_k_factor ||
-         d.standard == DeviceStandard::c37_constant_ka;
 }
 
 }  // namespace
@@ -202,10 +219,10 @@ std::vector<Rule> c37_rules(const Device& d, const RuleFacts& facts) {
         rule.missing = "peak_withstand_ka";
       else
         rule.evaluate = [rating = *d.peak_withstand_ka](const Through& t) -> Outcome {
-          const auto& xr = t.fault->c37->first_cycle.x_over_r;
-          if (!xr) return std::string(kNoRatio);
-          const double factor = crest_factor(*xr);
-          return Loading{t.ka * factor, rating, t.ka, xr, factor, {}, {}};
+          const auto ratio = ratio_of(t.fault->c37->first_cycle.x_over_r, t.own_x_over_r);
+          if (!ratio) return std::string(kNoRatio);
+          const double factor = crest_factor(ratio->x_over_r);
+          return Loading{t.ka * factor, rating, t.ka, ratio->x_over_r, factor, {}, ratio->note};
         };
       rules.push_back(std::move(rule));
       break;
@@ -215,14 +232,17 @@ std::vector<Rule> c37_rules(const Device& d, const RuleFacts& facts) {
       add_close_latch(rules, d, facts);
       if (d.short_time_ka) add_short_time(rules, d.short_time_ka, "short_time_ka", true, {});
   }
+  require_rated_voltage(d, rules);
   return rules;
 }
 
 std::string simplified_finding(const Device& d, const Through& t) {
   const Capability capability = capability_of(d);
   const auto& network = t.fault->c37->interrupting;
-  if (!is_high_voltage_breaker(d) || !capability.missing.empty() || !network.x_over_r || network.ez_ka == 0)
-    return {};
+  // The check belongs to ratings on symmetrical current.
+  const bool symmetrical =
+      d.standard == DeviceStandard::c37_k_factor || d.standard == DeviceStandard::c37_constant_ka;
+  if (!symmetrical || !capability.missing.empty() || !network.x_over_r || network.ez_ka == 0) return {};
   const double ex_ka = network.ex_ka * t.interrupting_ka / network.ez_ka, most_ka = capability.at(t);
   return std::string("simplified check, ") +
          (is_line_to_ground(t) ? "line to ground" : "three-phase or two-phase") + ": E/X " +

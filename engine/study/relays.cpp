@@ -36,12 +36,6 @@ bool is_taken_out(ElementKind kind) {
          kind == ElementKind::earthing_transformer;
 }
 
-double largest_phase(const BySequence<Complex>& sequence) {
-  double most = 0;
-  for (const Complex phase : to_phases(sequence)) most = std::max(most, std::abs(phase));
-  return most;
-}
-
 // A solved network in one state, where its elements end, and how far each node is from a source.
 class Base {
  public:

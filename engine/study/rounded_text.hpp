@@ -1,4 +1,4 @@
-// Numbers inside sentences.
+// Pieces of sentences.
 #pragma once
 #include <array>
 #include <charconv>
@@ -12,6 +12,11 @@ namespace kiloamp::detail {
   const auto end =
       std::to_chars(text.data(), text.data() + text.size(), value, std::chars_format::fixed, decimals);
   return {text.data(), end.ptr};
+}
+
+/// Both with a semicolon between, or the one that is not empty.
+[[nodiscard]] inline std::string joined(const std::string& a, const std::string& b) {
+  return a.empty() ? b : b.empty() ? a : a + "; " + b;
 }
 
 }  // namespace kiloamp::detail

@@ -146,6 +146,7 @@ void Study::prepare() {
   std::optional<Network> without_factors;
   if (c37) {
     const auto reactances = first_cycle_reactances();
+    for (DefaultUse& use : ieee_c37::assumed_of_motors(network_)) defaults_.push_back(std::move(use));
     without_factors = network_;
     ieee_c37::apply(reactances, network_);
   }

@@ -147,7 +147,7 @@ std::string read_elements(const std::string& text, std::vector<ElementKind>& kin
 }
 
 // Case, prefault voltage, method's own options, threads, output.
-void add_common_options(CLI::App& app, Command& c, Texts& t) {
+void add_common_options(CLI::App& app, Command& c, Texts& t, const std::string& of_which = {}) {
   app.add_option("CASE", c.case_file, "case file, or - for standard input")->required();
   app.add_option("--edition", t.edition, "iec60909: edition of the voltage factors, 2016 (default) or 2001")
       ->type_name("YEAR")
@@ -157,13 +157,15 @@ void add_common_options(CLI::App& app, Command& c, Texts& t) {
          "c37: induction motors below 50 hp in the first cycle: in (combined network, default) or out")
       ->type_name("WORD")
       ->check(one_of({"in", "out"}));
-  app.add_option("--prefault", t.prefault,
-                 "prefault voltage: case (as the case gives it, 1 pu where it does not; default), flat (1 "
-                 "pu), or a number in pu")
+  app.add_option(
+         "--prefault", t.prefault,
+         of_which +
+             "prefault voltage: case (as the case gives it, 1 pu where it does not; default), flat (1 "
+             "pu), or a number in pu")
       ->type_name("U")
       ->check(into(read_prefault, c.study.prefault));
   app.add_flag("--shunts", c.study.include_shunts,
-               "keep line charging and shunts in positive and negative sequence too");
+               of_which + "keep line charging and shunts in positive and negative sequence too");
   app.add_option("--threads", c.study.threads, "threads; results do not depend on it. Default: all cores")
       ->type_name("N")
       ->check(CLI::Range(1, 256));
@@ -200,6 +202,16 @@ void add_study_options(CLI::App& app, Command& c, Texts& t) {
       ->check(into(read_impedance, c.study.earth_ohm));
 }
 
+void add_iec60909_options(CLI::App& app, Texts& t) {
+  app.add_option("--duration", t.duration_s, "iec60909: duration Tk of the fault for Ith, in s. Default: 1")
+      ->type_name("S")
+      ->check(CLI::Range(1e-6, 100.0));
+  app.add_option("--kappa-method", t.kappa,
+                 "iec60909: a, b or c (default) of the standard's ways to find kappa")
+      ->type_name("LETTER")
+      ->check(one_of({"a", "b", "c"}));
+}
+
 void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
   add_study_options(app, c, t);
   auto* bus = app.add_option("--bus", c.buses,
@@ -219,13 +231,7 @@ void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
   app.add_option("--tmin", t.tmin_s, "iec60909: minimum time delay for Ib and i_dc, in s. Default: 0.1")
       ->type_name("S")
       ->check(CLI::Range(1e-6, 10.0));
-  app.add_option("--duration", t.duration_s, "iec60909: duration Tk for Ith, in s. Default: 1")
-      ->type_name("S")
-      ->check(CLI::Range(1e-6, 100.0));
-  app.add_option("--kappa-method", t.kappa,
-                 "iec60909: a, b or c (default) of the standard's ways to find kappa")
-      ->type_name("LETTER")
-      ->check(one_of({"a", "b", "c"}));
+  add_iec60909_options(app, t);
   app.add_flag("--intermediate", c.intermediate,
                "json and iec60909: correction factors, corrected impedances, machines with mu and q");
   app.add_flag(
@@ -238,25 +244,20 @@ void add_fault_options(CLI::App& app, Command& c, Texts& t, bool one_place) {
 }
 
 void add_duty_options(CLI::App& app, Command& c, Texts& t) {
-  add_common_options(app, c, t);
+  add_common_options(app, c, t, "ANSI/IEEE devices: ");
   app.add_option(
          "--scenario", c.scenario,
          "only this state of the network, by its id in the case. Default: as written and every scenario")
       ->type_name("ID");
   app.add_flag("--outages", c.duty.outages,
-               "also each single outage of a feeder, machine, line, transformer, reactor or coupler");
+               "also each single outage of a feeder, machine, line, transformer (earthing ones too), reactor "
+               "or coupler");
   app.add_option(
          "--method", t.method,
          "judge only IEC devices (iec60909) or only ANSI/IEEE devices (c37). Default: both, each by its own")
       ->type_name("METHOD")
       ->check(one_of({"iec60909", "c37"}));
-  app.add_option("--duration", t.duration_s, "iec60909: duration Tk of short-time duty, in s. Default: 1")
-      ->type_name("S")
-      ->check(CLI::Range(1e-6, 100.0));
-  app.add_option("--kappa-method", t.kappa,
-                 "iec60909: a, b or c (default) of the standard's ways to find kappa")
-      ->type_name("LETTER")
-      ->check(one_of({"a", "b", "c"}));
+  add_iec60909_options(app, t);
   app.add_option("--marginal", t.marginal_percent,
                  "margins below this percentage of the rating are marginal. Default: 10")
       ->type_name("PERCENT")

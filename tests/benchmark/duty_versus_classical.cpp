@@ -12,38 +12,13 @@
 #include <cstdlib>
 
 #include "engine/study/duty.hpp"
-#include "engine/study/ordered_pieces.hpp"
 #include "io/case_file/case_reader.hpp"
+#include "tests/benchmark/sweep_time.hpp"
 
 namespace {
 
 using namespace kiloamp;
 using Clock = std::chrono::steady_clock;
-
-double since_ms(Clock::time_point start) {
-  return std::chrono::duration<double, std::milli>(Clock::now() - start).count();
-}
-
-double classical_ms(Network network, int threads) {
-  StudyOptions options;
-  options.threads = threads;
-  const auto start = Clock::now();
-  const Study study(std::move(network), options);
-  std::vector<FaultLoop> loops;
-  std::vector<double> sums(static_cast<std::size_t>(threads), 0);
-  for (int t = 0; t < threads; ++t) loops.emplace_back(study);
-  const auto& buses = study.wanted_buses();
-  in_ordered_pieces(
-      buses.size(), 256, threads,
-      [&](int t, std::size_t first, std::size_t last) {
-        const auto own = static_cast<std::size_t>(t);
-        for (std::size_t b = first; b < last; ++b)
-          loops[own].at_bus(buses[b],
-                            [&](const StudiedFault& fault) { sums[own] += fault.result.current_ka; });
-      },
-      [](int) {});
-  return since_ms(start);
-}
 
 Network with_devices(Network network, DeviceFamily family, std::size_t count) {
   network.breakers.clear();
@@ -85,7 +60,7 @@ double duty_ms(const Network& network, std::size_t states, int threads) {
   options.study.threads = threads;
   const auto start = Clock::now();
   const DutyTable table = duty(n, options);
-  const double ms = since_ms(start);
+  const double ms = std::chrono::duration<double, std::milli>(Clock::now() - start).count();
   if (table.states.size() != states) std::abort();
   return ms;
 }
@@ -112,18 +87,18 @@ int main(int argc, char** argv) {
   constexpr std::size_t kStates = 5;
   for (const DeviceFamily family : {DeviceFamily::ansi, DeviceFamily::iec}) {
     const Network network = with_devices(*read.network, family, count);
-    std::vector<double> classical, state, once;
+    std::vector<double> classical, one, five;
     for (int round = 0; round < 9; ++round) {
-      classical.push_back(classical_ms(Network(*read.network), threads));
-      const double one = duty_ms(network, 1, threads), five = duty_ms(network, kStates, threads);
-      state.push_back((five - one) / (kStates - 1));
-      once.push_back(one - state.back());
+      classical.push_back(sweep_ms(Network(*read.network), Method::classical, threads));
+      one.push_back(duty_ms(network, 1, threads));
+      five.push_back(duty_ms(network, kStates, threads));
     }
+    const double state = (least(five) - least(one)) / (kStates - 1), once = least(one) - state;
     std::printf(
         "%zu buses, %zu devices, %d threads, %s: classical sweep %.1f ms, each state %.1f ms: %.1f times; "
         "once %.1f ms\n",
         network.buses.size(), network.breakers.size(), threads, family == DeviceFamily::iec ? "IEC" : "C37",
-        least(classical), least(state), least(state) / least(classical), least(once));
+        least(classical), state, state / least(classical), once);
   }
   return 0;
 }

@@ -99,10 +99,11 @@ const std::vector<Complete>& complete_devices() {
   return all;
 }
 
-DutyTable judged(const Complete& c, const Json& device) {
+DutyTable judged(const Complete& c, const Json& device, bool without_voltage = false) {
   Json one = device;
   one["id"] = "D";
   one["bus"] = "B";
+  if (!one.contains("rated_kv") && !without_voltage) one["rated_kv"] = c.kv * 1.1;
   return duty(read_text(case_with(c.section, one, c.kv).dump()), {});
 }
 
@@ -126,7 +127,7 @@ BOOST_AUTO_TEST_CASE(each_missing_datum_is_named_and_never_passes) {
       BOOST_TEST_CONTEXT(c.device.dump() << " without " << field) {
         Json device = c.device;
         device.erase(field);
-        const DutyTable t = judged(c, device);
+        const DutyTable t = judged(c, device, field == "rated_kv");
         BOOST_REQUIRE(t.devices.size() == 1U);
         bool named = false;
         for (const DutyCheck& check : t.devices[0].checks)
@@ -138,6 +139,20 @@ BOOST_AUTO_TEST_CASE(each_missing_datum_is_named_and_never_passes) {
     }
 }
 
+BOOST_AUTO_TEST_CASE(without_a_rated_voltage_nothing_is_proven) {
+  for (const Complete& c : complete_devices()) {
+    BOOST_TEST_CONTEXT(c.device.dump()) {
+      Json device = c.device;
+      device.erase("rated_kv");
+      const DutyTable t = judged(c, device, true);
+      for (const DutyCheck& check : t.devices.at(0).checks) {
+        BOOST_TEST(check.why == "missing: rated_kv");
+        BOOST_TEST((check.verdict == Verdict::not_evaluated));
+      }
+    }
+  }
+}
+
 BOOST_AUTO_TEST_CASE(unknown_interrupting_time_asks_for_the_parting_time) {
   const Complete& c = complete_devices()[9];
   Json device = c.device;
@@ -147,9 +162,14 @@ BOOST_AUTO_TEST_CASE(unknown_interrupting_time_asks_for_the_parting_time) {
 }
 
 BOOST_AUTO_TEST_CASE(a_device_without_current_in_any_state_does_not_pass) {
-  Json c = case_with(
-      "breakers",
-      {{"id", "D"}, {"bus", "B"}, {"branch", "S"}, {"standard", "ul489"}, {"interrupting_ka", 25}}, 0.4);
+  Json c = case_with("breakers",
+                     {{"id", "D"},
+                      {"bus", "B"},
+                      {"branch", "S"},
+                      {"standard", "ul489"},
+                      {"rated_kv", 0.48},
+                      {"interrupting_ka", 25}},
+                     0.4);
   c["buses"].push_back({{"id", "B2"}, {"nominal_kv", 0.4}});
   c["switches"] = {{{"id", "S"}, {"from", "B"}, {"to", "B2"}, {"closed", false}}};
   const DutyTable t = duty(read_text(c.dump()), {});
@@ -158,9 +178,11 @@ BOOST_AUTO_TEST_CASE(a_device_without_current_in_any_state_does_not_pass) {
 }
 
 BOOST_AUTO_TEST_CASE(a_family_is_never_judged_with_the_other_s_current) {
-  Json c =
-      case_with("fuses", {{"id", "I"}, {"bus", "B"}, {"standard", "iec60269"}, {"breaking_ka", 100}}, 0.4);
-  c["fuses"].push_back({{"id", "A"}, {"bus", "B"}, {"standard", "ul248"}, {"interrupting_ka", 200}});
+  Json c = case_with(
+      "fuses", {{"id", "I"}, {"bus", "B"}, {"standard", "iec60269"}, {"rated_kv", 0.5}, {"breaking_ka", 100}},
+      0.4);
+  c["fuses"].push_back(
+      {{"id", "A"}, {"bus", "B"}, {"standard", "ul248"}, {"rated_kv", 0.6}, {"interrupting_ka", 200}});
   DutyOptions options;
   options.family = DeviceFamily::iec;
   const DutyTable t = duty(read_text(c.dump()), options);

@@ -7,6 +7,7 @@ namespace kiloamp::ieee_c37 {
 namespace {
 
 constexpr double kKwPerHp = 0.745699872;
+constexpr double kLargeHp = 1000, kTwoPoleLargeHp = 250;
 
 bool needs_transient(MachineClass machine, DutyNetwork network) {
   return machine == MachineClass::hydro_without_dampers ||
@@ -66,9 +67,29 @@ double one_motor_hp(const InductionMotor& m) {
 
 MachineClass class_of(const InductionMotor& motor) {
   const double hp = one_motor_hp(motor);
-  const bool two_pole = motor.pole_pairs == 1;
-  if (hp > 1000 || (two_pole && hp > 250)) return MachineClass::large_induction;
+  const bool two_pole = motor.pole_pairs.value_or(1) == 1;
+  if (hp > kLargeHp || (two_pole && hp > kTwoPoleLargeHp)) return MachineClass::large_induction;
   return hp < 50 ? MachineClass::small_induction : MachineClass::medium_induction;
+}
+
+std::vector<DefaultUse> assumed_of_motors(const Network& network) {
+  DefaultUse speed{
+      "pole_pairs", "1 (larger current: X\" of a large motor)", "common practice, no source", {}};
+  DefaultUse power{
+      "rated_hp", "1 hp per kVA (no power factor and efficiency)", "common practice, no source", {}};
+  for (std::uint32_t i = 0; i < network.induction_motors.size(); ++i) {
+    const InductionMotor& m = network.induction_motors[i];
+    if (!is_live(network, m, m.bus) || !m.drives_fault_current()) continue;
+    const double hp = one_motor_hp(m);
+    if (!m.pole_pairs && hp > kTwoPoleLargeHp && hp <= kLargeHp)
+      speed.elements.push_back({ElementKind::induction_motor, i});
+    if (m.rated_mva && !(m.power_factor && m.efficiency_percent))
+      power.elements.push_back({ElementKind::induction_motor, i});
+  }
+  std::vector<DefaultUse> used;
+  for (DefaultUse* one : {&speed, &power})
+    if (!one->elements.empty()) used.push_back(std::move(*one));
+  return used;
 }
 
 MachineClass class_of(const SynchronousMachine& machine) {

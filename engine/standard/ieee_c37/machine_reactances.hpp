@@ -43,7 +43,7 @@ enum class SmallMotors : std::uint8_t { combined, omitted };
 /// Rated shaft power of one motor in hp (1 hp = 0.745699872 kW by definition); a rating in MVA without power
 /// factor and efficiency counts 1 kVA as 1 hp (common practice, no source).
 [[nodiscard]] double one_motor_hp(const InductionMotor& motor);
-/// A motor whose speed the case does not say counts as not above two pole pairs' speed.
+/// A motor whose speed the case does not say counts as two-pole: the larger current.
 [[nodiscard]] MachineClass class_of(const InductionMotor& motor);
 [[nodiscard]] MachineClass class_of(const SynchronousMachine& machine);
 
@@ -53,6 +53,9 @@ struct MachineReactance {
   MachineClass machine_class = MachineClass::generator;
   std::optional<double> factor;  ///< empty: left out
 };
+
+/// Motors of which class_of assumes the speed, or one_motor_hp the power factor: what a report lists.
+[[nodiscard]] std::vector<DefaultUse> assumed_of_motors(const Network& network);
 
 /// Every machine and motor of the network in service that drives a fault current, in the order of the case.
 /// @param missing  receives a finding for each machine that needs X'd and has none

@@ -14,12 +14,7 @@ namespace {
 // A generator whose current is above this part of that for a fault at its terminals is near enough to decay.
 constexpr double kLocalShare = 0.4;
 constexpr double kXOverRTolerance = 0.1;
-
-double largest_phase(const BySequence<Complex>& sequence) {
-  double most = 0;
-  for (const Complex phase : to_phases(sequence)) most = std::max(most, std::abs(phase));
-  return most;
-}
+constexpr double kNothingLocal = 1e-6;  // share that is rounding
 
 // Parts of the network that no transformer separates, and which of them one transformer joins.
 class Levels {
@@ -33,8 +28,8 @@ class Levels {
       const ElementKind kind = model.terminals[model.block_terminals[b.first]].element.kind;
       return kind == ElementKind::transformer || kind == ElementKind::three_winding_transformer;
     };
-    for (const Block& b : model.blocks)
-      for (std::uint32_t p = 1; p < b.count && !is_transformer(b); ++p)
+    for (const Block& b : model.blocks)  // coupled lines may be of two voltages
+      for (std::uint32_t p = 1; p < b.count && !b.coupling && !is_transformer(b); ++p)
         level_[root(node(b, p))] = root(node(b, 0));
     for (std::uint32_t n = 0; n < level_.size(); ++n) level_[n] = root(n);
     for (const Block& b : model.blocks)
@@ -130,7 +125,7 @@ void Evaluation::find_nacd(const Network& given, int threads) {
     for (const NearSources::Near& source : near.at_node(node))
       if (levels.within_one_transformer(places[source.source].node, node))
         remote -= y_of_place[source.source] * source.z_pu;
-    nacd_[bus] = std::min(1.0, std::abs(remote));
+    nacd_[bus] = std::abs(remote) > 1 - kNothingLocal ? 1.0 : std::abs(remote);
   }
 }
 
